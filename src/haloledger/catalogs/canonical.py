@@ -40,7 +40,7 @@ class Galaxies:
     log_m200c_err: np.ndarray
     distance_mpc: np.ndarray
     distance_err_mpc: np.ndarray
-    group: np.ndarray  # "label:id" of the listed group, "" where there is none
+    group: np.ndarray  # group_id as written: "label:id", or a bare id of any listed group; "" where there is none
     mag: dict[str, np.ndarray]  # canonical band ("g","r","i","z","ks","w1") -> apparent magnitude, system as in `mag_system`
     mag_system: dict[str, str] = field(default_factory=dict)  # band -> "AB" or "Vega"
     mag_rest: bool = False  # magnitudes are already corrected to the rest frame
@@ -74,7 +74,7 @@ class Groups:
     distance_mpc: np.ndarray
     distance_err_mpc: np.ndarray
     centre_err_kpc: np.ndarray  # 1 sigma per axis; 0 where the centre is taken as exact
-    mass_def: str = "200c"  # "200c" "500c" "200m" "180m" "vir"
+    mass_def: np.ndarray  # definition of log_mass row by row: "200c" "500c" "200m" "180m" "vir"; "" where log_mass is NaN
     mass_is: str = "posterior"  # or "likelihood": then the mass-function prior is applied
     mass_from: str = ""  # what log_mass was derived from: "lx", "sz", "richness", "sigma_v", "luminosity", "" unknown
     proxy: str = ""  # proxy to use where log_mass is NaN: "sigma_v", "richness", "lx"
@@ -112,6 +112,7 @@ class Bursts:
     dm_host_obs: np.ndarray
     dm_host_err: np.ndarray
     note: np.ndarray  # what the reader has to say of the row
+    notes: tuple[str, ...] = ()  # what it has to say of the whole table
     refused: tuple[Refusal, ...] = ()
 
     def __len__(self) -> int:
