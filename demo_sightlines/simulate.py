@@ -42,7 +42,7 @@ RHO_CRIT = Planck18.critical_density(Z_GRID).to_value("Msun / kpc3")
 
 
 @dataclass
-class Halos:
+class Haloes:
     """Haloes as they are.
 
     ra, dec [deg]; z without and z_obs with peculiar motion; log10 M200c and the central's log10 M* [Msun].
@@ -146,7 +146,7 @@ def central_mass(log_m: np.ndarray, z: np.ndarray, scatter: np.ndarray) -> np.nd
     return log_m + np.log10(share) + scatter
 
 
-def light_cone() -> Halos:
+def light_cone() -> Haloes:
     """Random haloes over the footprint and its margin."""
     ra0, ra1, dec0, dec1 = STRIP[0] - MARGIN, STRIP[1] + MARGIN, STRIP[2] - MARGIN, STRIP[3] + MARGIN
     sines = np.sin(np.radians([dec0, dec1]))
@@ -160,7 +160,7 @@ def light_cone() -> Halos:
     dec = np.degrees(np.arcsin(sines[0] + uniform(5, n) * np.diff(sines)[0]))
     z_obs = (1 + z) * (1 + 300 * normal(6, n) / LIGHT) - 1
     log_mstar = central_mass(log_m, z, 0.18 * normal(7, n))
-    return Halos(ra, dec, z, z_obs, log_m, log_mstar, 10 ** (0.1 * normal(8, n)))
+    return Haloes(ra, dec, z, z_obs, log_m, log_mstar, 10 ** (0.1 * normal(8, n)))
 
 
 # ---------------------------------------------------------------- the eight bursts and what is planted in front of them
@@ -184,7 +184,7 @@ class Role:
 
 
 CLUSTER_R500 = 0.3  # impact of the cluster's burst [r500c]
-ELLIPSE = (60, 20, 35)  # of Gannet
+ELLIPSE = (60.0, 20.0, 35.0)  # of Gannet
 ROLES = (
     Role("Avocet", "cluster", 0.29, (343.7, 344.1, -8.65, -8.4), 14.5, 0.112, np.nan, 40, 11.45, loc=(0.4, 0.3, 15)),
     Role("Bittern", "galaxy_halo", 0.21, (342.4, 342.8, -8.8, -8.3), 12.3, 0.081, 0.5, 250, 10.72, loc=(0.2, 0.2, 0)),
@@ -192,9 +192,7 @@ ROLES = (
     Role("Dunlin", "outside_footprint", 0.34, (342.7, 343.1, -9.6, -9.35), loc=(0.5, 0.4, 120)),
     Role("Egret", "photometric_redshift", 0.30, (342.9, 343.3, -8.7, -8.3), 13.0, 0.272, 0.3, 160, 11.15),
     Role("Fulmar", "host_group", 0.17, (344.6, 344.9, -8.7, -8.3), 13.7, 0.17, 0.35, 310, 11.1, 10.6, (0.2, 0.1, 45)),
-    Role(
-        "Gannet", "large_localisation", 0.25, (344.2, 344.5, -8.8, -8.3), 12.5, 0.095, 0.6, 100, 10.85, loc=(60, 20, 35)
-    ),
+    Role("Gannet", "large_localisation", 0.25, (344.2, 344.5, -8.8, -8.3), 12.5, 0.095, 0.6, 100, 10.85, loc=ELLIPSE),
     Role("Heron", "local_volume", 0.0152, (346.0, 346.2, -8.6, -8.4), 11.4, 0.00222, 0.3, 80, 9.75, 9.9, (0.6, 0.3, 0)),
 )
 LOCAL_MPC = 9.5  # distance of the halo in front of Heron; its redshift holds a peculiar velocity
@@ -210,23 +208,23 @@ SENTENCES = {
 }
 
 
-def separation_kpc(ra: float, dec: float, h: Halos) -> np.ndarray:
+def separation_kpc(ra: float, dec: float, h: Haloes) -> np.ndarray:
     """Impact parameter [proper kpc] of a line at each halo; flat sky, good to 1e-4 within a degree."""
     east = np.radians(h.ra - ra) * np.cos(np.radians((h.dec + dec) / 2))
     return np.hypot(east, np.radians(h.dec - dec)) * distance_kpc(h)
 
 
-def distance_kpc(h: Halos) -> np.ndarray:
+def distance_kpc(h: Haloes) -> np.ndarray:
     """Proper kpc per radian; the one local halo is where its distance says."""
     return np.where(h.z < Z_RANGE[0], 1000 * LOCAL_MPC, angular_kpc(h.z))
 
 
-def place(index: int, role: Role, sky: Halos) -> tuple[float, float]:
+def place(index: int, role: Role, sky: Haloes) -> tuple[float, float]:
     """Where the burst lies: of 600 places in its window, one whose other haloes leave the role to what is planted."""
     ra = role.window[0] + uniform(20 + index, 1200)[:600] * (role.window[1] - role.window[0])
     dec = role.window[2] + uniform(20 + index, 1200)[600:] * (role.window[3] - role.window[2])
     near = (sky.z < role.z) & (sky.ra > ra.min() - 1) & (sky.ra < ra.max() + 1)
-    h = Halos(*(getattr(sky, f.name)[near] for f in fields(Halos)))
+    h = Haloes(*(getattr(sky, f.name)[near] for f in fields(Haloes)))
     r200 = r200c_kpc(h.log_m, h.z)
     for x, y in zip(ra, dec, strict=True):
         b = separation_kpc(x, y, h) / r200
@@ -238,7 +236,7 @@ def place(index: int, role: Role, sky: Halos) -> tuple[float, float]:
     raise RuntimeError(f"no place for {role.burst} in its window; choose another seed or window")
 
 
-def planted(role: Role, ra: float, dec: float) -> Halos | None:
+def planted(role: Role, ra: float, dec: float) -> Haloes | None:
     """The halo of the role, at its impact parameter from the burst."""
     if np.isnan(role.log_m):
         return None
@@ -248,7 +246,7 @@ def planted(role: Role, ra: float, dec: float) -> Halos | None:
     theta = np.degrees(impact / (1000 * LOCAL_MPC if local else float(angular_kpc(role.z_halo))))
     north, east = theta * np.cos(np.radians(role.angle)), theta * np.sin(np.radians(role.angle))
     ra_halo = ra + east / np.cos(np.radians(dec + north / 2))
-    return Halos(
+    return Haloes(
         *(np.array([v]) for v in (ra_halo, dec + north, role.z_halo, role.z_halo, role.log_m, role.log_mstar, 1.0))
     )
 
@@ -273,12 +271,12 @@ class Light:
     host_of: np.ndarray  # index of the burst it hosts, -1 for none
 
 
-def centrals(h: Halos) -> Light:
+def centrals(h: Haloes) -> Light:
     n = len(h.z)
     return Light(h.ra, h.dec, h.z_obs, h.log_mstar, np.arange(n), np.full(n, -1))
 
 
-def satellites(h: Halos) -> Light:
+def satellites(h: Haloes) -> Light:
     """Satellites of haloes above 10^12.6: infall masses as the subhalo mass function, places as an NFW profile.
 
     Number above a share mu of the host: 0.13 mu^-0.8 (the slope is common practice, the amplitude invented).
@@ -372,7 +370,7 @@ def survey(g: Light, photometric: int, spectroscopic: int) -> Seen:
 # ---------------------------------------------------------------- groups
 
 
-def group_table(h: Halos, g: Light, seen: Seen) -> dict[str, np.ndarray]:
+def group_table(h: Haloes, g: Light, seen: Seen) -> dict[str, np.ndarray]:
     """Groups with four listed members or more; the listed mass is a posterior, so truth scatters about it."""
     halo = g.halo[seen.index]
     members = np.bincount(halo[halo >= 0], minlength=len(h.z))
@@ -426,7 +424,7 @@ def mean_haloes(z: float) -> float:
     return PC_FACTOR * float(np.sum((y[1:] + y[:-1]) / 2 * np.diff(x)))
 
 
-def crossings(role: Role, ra: float, dec: float, h: Halos, own: int) -> dict[str, np.ndarray]:
+def crossings(role: Role, ra: float, dec: float, h: Haloes, own: int) -> dict[str, np.ndarray]:
     """Haloes in front within 2 r200c, with the DM each puts on the line; `own` is the halo the burst sits in."""
     b = separation_kpc(ra, dec, h)
     x = b / r200c_kpc(h.log_m, h.z)
@@ -464,8 +462,8 @@ def filled(values: np.ndarray) -> list:
 def write_galaxies(folder: Path, g: Light, seen: Seen, galaxy_id: list[str], group_id: list[str]) -> None:
     about = [
         "SIMULATED: no galaxy of this list exists. Written by simulate.py, which stands beside it.",
-        f"All galaxies brighter than r = {R_LIMIT} (AB) in the strip of footprint.txt; most brighter than {R_SPEC} have",
-        "spectra, most fainter ones a photometric redshift.",
+        f"All galaxies brighter than r = {R_LIMIT} (AB) in the strip of footprint.txt;",
+        f"most brighter than {R_SPEC} have spectra, most fainter ones a photometric redshift.",
         "Masses: Chabrier, log10 Msun, error without the redshift part. Redshifts: heliocentric, errors 1 sigma.",
         "group_id: the row of groups.ecsv it belongs to. distance_mpc: nearer than 50 Mpc only.",
     ]
@@ -558,7 +556,7 @@ def write_truth(folder: Path, rows: list[dict], crossed: list[dict]) -> None:
     about = [
         "SIMULATED: what was put into the sky of this folder, for comparison with what an audit finds.",
         "dm = dm_mw_disc + dm_mw_halo + dm_haloes + dm_diffuse + dm_host_obs, all in the observer frame.",
-        "dm_haloes: every halo above 10^11.3 Msun that the line crosses inside r200c; dm_diffuse: the rest of the cosmos.",
+        "dm_haloes: every halo above 10^11.3 Msun that the line crosses inside r200c; dm_diffuse: the rest.",
         "key_*: the halo that makes the role, in the true sky; empty where there is none.",
     ]
     dm_unit = "pc cm-3"
@@ -615,7 +613,7 @@ def seen_place(index: int, role: Role, true: tuple[float, float]) -> tuple[float
     return true[0] + east / np.cos(np.radians(true[1])), true[1] + north
 
 
-def build() -> tuple[list, Halos, Light, dict[str, int]]:
+def build() -> tuple[list, Haloes, Light, dict[str, int]]:
     """Places of the bursts, haloes, galaxies, and which halo is planted for which burst (those come first)."""
     random_sky = light_cone()
     places = [place(i, r, random_sky) for i, r in enumerate(ROLES)]
@@ -626,7 +624,7 @@ def build() -> tuple[list, Halos, Light, dict[str, int]]:
     return places, sky, stack([centrals(sky), satellites(sky), hosts(places, {"Fulmar": key["Fulmar"]})]), key
 
 
-def row_names(sky: Halos, seen: Seen, galaxy_ids: list[str], group_of_halo: dict[int, str]) -> dict[int, str]:
+def row_names(sky: Haloes, seen: Seen, galaxy_ids: list[str], group_of_halo: dict[int, str]) -> dict[int, str]:
     """The listed row of each halo: its group, else its central."""
     listed = zip(seen.index.tolist(), galaxy_ids, strict=True)
     return {k: name for k, name in listed if k < len(sky.z)} | group_of_halo
@@ -647,7 +645,7 @@ def dm_parts(i: int, role: Role, ra: float, dec: float, from_haloes: float) -> d
     return parts | {"dm": sum(parts.values()), "dm_cosmic_mean_z": mean}
 
 
-def truth(places: list, sky: Halos, key: dict[str, int], row_of: dict[int, str]) -> tuple[list[dict], list[dict]]:
+def truth(places: list, sky: Haloes, key: dict[str, int], row_of: dict[int, str]) -> tuple[list[dict], list[dict]]:
     """A row per burst, and a row per burst and halo in front of it."""
     rows, crossed = [], []
     for i, (role, (ra, dec)) in enumerate(zip(ROLES, places, strict=True)):
