@@ -41,7 +41,9 @@ class Galaxies:
     distance_mpc: np.ndarray
     distance_err_mpc: np.ndarray
     group: np.ndarray  # group_id as written: "label:id", or a bare id of any listed group; "" where there is none
-    mag: dict[str, np.ndarray]  # canonical band ("g","r","i","z","ks","w1") -> apparent magnitude, system as in `mag_system`
+    mag: dict[
+        str, np.ndarray
+    ]  # canonical band ("g","r","i","z","ks","w1") -> apparent magnitude, system as in `mag_system`
     mag_system: dict[str, str] = field(default_factory=dict)  # band -> "AB" or "Vega"
     mag_rest: bool = False  # magnitudes are already corrected to the rest frame
     z_is: str = "likelihood"  # or "posterior": then no volume or mass-function prior is put on z
@@ -74,7 +76,9 @@ class Groups:
     distance_mpc: np.ndarray
     distance_err_mpc: np.ndarray
     centre_err_kpc: np.ndarray  # 1 sigma per axis; 0 where the centre is taken as exact
-    mass_def: np.ndarray  # definition of log_mass row by row: "200c" "500c" "200m" "180m" "vir"; "" where log_mass is NaN
+    mass_def: (
+        np.ndarray
+    )  # definition of log_mass row by row: "200c" "500c" "200m" "180m" "vir"; "" where log_mass is NaN
     mass_is: str = "posterior"  # or "likelihood": then the mass-function prior is applied
     mass_from: str = ""  # what log_mass was derived from: "lx", "sz", "richness", "sigma_v", "luminosity", "" unknown
     proxy: str = ""  # proxy to use where log_mass is NaN: "sigma_v", "richness", "lx"

@@ -1,0 +1,64 @@
+"""Prepared galaxy columns -> Galaxies."""
+
+from __future__ import annotations
+
+from haloledger.catalogs.canonical import Galaxies
+from haloledger.catalogs.prepare import Prepared
+from haloledger.catalogs.rows import (
+    Rows,
+    distance_error,
+    error_or_default,
+    photometric_rows,
+    redshift_error,
+    row_names,
+)
+from haloledger.catalogs.schema import BAND_SYSTEM, BANDS
+
+STELLAR_MASS_RANGE = (1.0, 14.0)  # log10 Msun; below, a cell is in units of 1e10, above, it is nobody's galaxy
+HALO_MASS_RANGE = (5.0, 17.0)
+
+
+def galaxies_from(table: Prepared) -> Galaxies:
+    """Checks each row, fills in errors, keeps the good rows."""
+    rows = Rows(table, "id")
+    rows.check_names()
+    rows.check_numbers()
+    rows.check_position()
+    rows.check_redshift()
+    rows.check_log_mass("log_mstar", *STELLAR_MASS_RANGE)
+    rows.check_log_mass("log_m200c", *HALO_MASS_RANGE)
+    photometric = photometric_rows(rows)
+    index = rows.index()
+    card = table.card
+    bands = [b for b in BANDS if f"mag_{b}" in table.columns]
+    system = {b: card.magnitudes.system.get(b, BAND_SYSTEM[b]) for b in bands}
+    if table.bare and bands:
+        said = ", ".join(f"{b} {system[b]}" for b in bands)
+        table.notes.append(f"{table.label}: magnitudes are taken as apparent and extinction-corrected: {said}")
+    columns = {
+        "z_err": redshift_error(table, photometric, index),
+        "log_mstar_err": error_or_default(table, "log_mstar", "log_mstar_err", card.mass.error_dex, index),
+        "log_m200c_err": error_or_default(table, "log_m200c", "log_m200c_err", card.mass.error_dex, index),
+        "distance_err_mpc": distance_error(table, index),
+    }
+    return Galaxies(
+        label=table.label,
+        row=row_names(table.label, rows.names[index]),
+        ra_deg=table.number("ra")[index] % 360.0,
+        dec_deg=table.number("dec")[index],
+        z=table.number("z")[index],
+        photometric=photometric[index].astype(bool),
+        log_mstar=table.number("log_mstar")[index],
+        log_m200c=table.number("log_m200c")[index],
+        distance_mpc=table.number("distance_mpc")[index],
+        group=table.text("group_id")[index],
+        mag={b: table.number(f"mag_{b}")[index] for b in bands},
+        mag_system=system,
+        mag_rest=card.magnitudes.rest_frame,
+        z_is=card.redshift.taken_as,
+        mass_is=card.mass.taken_as or "likelihood",
+        mass_err_holds_z=card.mass.error_holds_redshift,
+        notes=tuple(table.notes),
+        refused=rows.refusals(),
+        **{name: values[index] for name, values in columns.items()},
+    )
