@@ -32,7 +32,7 @@ H = Planck18.h
 BARYON_SHARE = Planck18.Ob0 / Planck18.Om0
 F_DIFFUSE = 0.84  # ionised share of the baryons, haloes included; common practice at z < 1
 PC_FACTOR = 976.040  # 3 c H0 Ob0 (7/8) / (8 pi G m_p) for astropy's Planck18 [pc cm-3]
-ELECTRONS = 7 / 8 * 4.04770e-8 * 1000  # Msun kpc-3 times kpc to pc cm-3, by astropy's constants
+ELECTRONS = 7 / 8 * 4.046285e-8 * 1000  # Msun kpc-3 times kpc to pc cm-3, by astropy's constants
 MW_HALO = 38.0  # one number for the whole field [pc cm-3]
 DISC_POLE = 22.0  # plane-parallel disc seen at the pole, the middle of the published models [pc cm-3]
 
