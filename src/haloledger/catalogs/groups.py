@@ -20,7 +20,7 @@ from haloledger.catalogs.schema import MASS_DEFINITIONS, near
 # Of several proxies the first is used: X-ray light, then richness, then dynamics. Common practice.
 PROXIES = ("lx", "richness", "sigma_v")
 # Which relation file turns a proxy into a mass where no card names one.
-RELATION_OF = {"lx": "arnaud2010", "richness": "mcclintock2019", "sigma_v": "munari2013"}
+RELATION_OF = {"lx": "pratt2009", "richness": "mcclintock2019", "sigma_v": "munari2013"}
 
 
 def groups_from(table: Prepared) -> Groups:

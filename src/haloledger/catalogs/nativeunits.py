@@ -67,7 +67,7 @@ def factor(unit: str, spec: Field, h: float) -> float:
     if spec.unit == "" and native.is_equivalent(u.km / u.s):  # a redshift given as cz
         return float((1 * native).to_value(u.km / u.s)) / C_KM_S
     if spec.unit == "dex":
-        return float((1 * native).to_value(u.dimensionless_unscaled)) if native != u.dex else 1.0
+        return 1.0
     ours = parse(spec.unit) or u.dimensionless_unscaled
     return float((1 * native).to_value(ours)) * over_h
 
@@ -76,18 +76,11 @@ def check_unit(unit: str, spec: Field, where: str, h: float) -> None:
     """InputError where a card's unit cannot become ours."""
     if spec.text or unit == SHARE:
         return
-    if spec.unit == "dex":  # an error of a logarithm may be given on the linear mass
-        spec = Field("Msun", spec.what) if unit and parse_or_none(unit) is not None else spec
+    if spec.unit == "dex" and unit not in ("", "dex"):
+        spec = Field("Msun", spec.what)  # the error of a logarithm may be given on the linear mass
     try:
         factor(unit, spec, h)
     except ValueError as fault:  # astropy's UnitConversionError is one too
         raise InputError(
             f"{where} = '{unit}' does not convert to '{spec.unit}' ({fault}). Write the unit of the native cells."
         ) from None
-
-
-def parse_or_none(unit: str) -> Any:
-    try:
-        return parse(split_h(unit)[0])
-    except ValueError:
-        return None

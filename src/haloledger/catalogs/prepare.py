@@ -200,7 +200,7 @@ def _log_factor(file: str, native: str, unit: str, spec: Field) -> float:
 def prepare_card(raw: RawTable, card: Card) -> Prepared:
     """A native table through its card: rows dropped, units, h, frames and logarithms turned into ours."""
     _have_native(raw, card)
-    notes = [f"{card.name}: {note}" for note in card.notes]
+    notes: list[str] = []
     keep = np.ones(raw.n, dtype=bool)
     for rule in card.drop:
         if rule.column:
