@@ -1,7 +1,7 @@
 """The tables every other package sees: galaxies, groups and bursts as plain arrays with the unit in the name.
 
-A missing number is NaN, a missing text is "". Redshifts are heliocentric. Masses are log10 Msun without h, IMF Chabrier.
-Readers and cards bring files to this form; nothing above this floor knows a native column.
+A missing number is NaN, a missing text is "". Redshifts are heliocentric. Masses are log10 Msun without h, IMF
+Chabrier. Readers and cards bring files to this form; nothing above this floor knows a native column.
 """
 
 from __future__ import annotations

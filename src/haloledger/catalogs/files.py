@@ -50,7 +50,8 @@ def open_table(
     except Exception as fault:  # each format's reader has its own zoo of exceptions
         reason = str(fault).strip().splitlines()[0] if str(fault).strip() else type(fault).__name__
         raise InputError(
-            f"{path}: cannot be read as {found} ({reason}). Is the file whole, and is it ECSV, CSV, FITS, VOTable or Parquet?"
+            f"{path}: cannot be read as {found} ({reason})."
+            " Is the file whole, and is it ECSV, CSV, FITS, VOTable or Parquet?"
         ) from None
     if not table.columns:
         raise InputError(f"{path}: the table has no columns. Write a header line with the column names first.")
@@ -208,7 +209,8 @@ def _refuse_long_lines(text: str, sep: str, native: list[str], file: str) -> Non
             cells = line.split(sep)
             if any(c.strip() for c in cells[len(native) :]):
                 raise InputError(
-                    f"{file}: row {number} has {len(cells)} cells, the header {len(native)}. Quote cells that hold '{sep}'."
+                    f"{file}: row {number} has {len(cells)} cells, the header {len(native)}."
+                    f" Quote cells that hold '{sep}'."
                 )
 
 

@@ -1,7 +1,7 @@
 """Where a catalogue has looked: IVOA MOC maps and polygon outlines.
 
-A polygon's corners are joined by great circles and its inside is the smaller part of the sky. It is laid on a plane by
-Lambert's equal-area projection around its middle, which has no seam but the point opposite: no trouble at RA 0 or a pole.
+A polygon's corners are joined by great circles and its inside is the smaller part of the sky. It is laid on a plane
+by Lambert's equal-area projection around its middle, which has no seam but the point opposite: no trouble at RA 0 or a pole.
 """
 
 from __future__ import annotations
@@ -21,7 +21,9 @@ STEP_DEG = 0.5  # corners are filled in to this spacing: a chord then leaves its
 class Footprint(Protocol):
     """An area on the sky."""
 
-    label: str
+    @property
+    def label(self) -> str:
+        """Stem of the file."""
 
     def contains(self, ra_deg: Any, dec_deg: Any) -> np.ndarray:
         """bool, shape of ra_deg: inside or not; degrees ICRS, any RA (-30 is 330)."""
@@ -95,7 +97,7 @@ def _read_moc(path: Path) -> MocFootprint:
         moc = MOC.from_fits(str(path))
     except Exception as fault:  # mocpy raises many kinds
         raise InputError(
-            f"{path}: is FITS but no coverage map ({str(fault).splitlines()[0] if str(fault) else type(fault).__name__})."
+            f"{path}: is FITS but no coverage map ({(str(fault) or type(fault).__name__).splitlines()[0]})."
             " Give a MOC, or a text file of RA Dec in degrees."
         ) from None
     if moc.empty():

@@ -58,8 +58,8 @@ def _one_name_each(rows: Rows) -> None:
         twice = names[count > 1][0]
         where = ", ".join(str(int(r)) for r in rows.table.row_number[rows.names == twice])
         raise InputError(
-            f"{rows.table.file}: two bursts of one name: '{twice}' in rows {where}. Give each burst its own name (a letter behind"
-            " the date), or leave one out."
+            f"{rows.table.file}: two bursts of one name: '{twice}' in rows {where}. Give each burst its own name (a"
+            " letter behind the date), or leave one out."
         )
 
 
@@ -84,7 +84,7 @@ def _localisation(rows: Rows) -> tuple[np.ndarray, np.ndarray, np.ndarray, np.nd
     larger = np.fmax(major, minor)
     for i in np.flatnonzero(circle):
         note[i] = (
-            f"axes {major[i]:g} and {minor[i]:g} arcsec without a position angle: a circle of {larger[i]:g} arcsec is used"
+            f"axes {major[i]:g} and {minor[i]:g} arcsec, no position angle: a circle of {larger[i]:g} arcsec is used"
         )
     major, minor = np.where(circle, larger, major), np.where(circle, larger, minor)
     rows.refuse(

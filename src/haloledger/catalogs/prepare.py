@@ -116,16 +116,16 @@ def _refuse_h_names(raw: RawTable, kind: str, found: dict[str, str]) -> None:
         if native not in found.values() and _H_NAME.match(native):
             ours = "log_mass" if kind == "groups" else near(native, FIELDS[kind], 0.5) or "log_mstar"
             raise InputError(
-                f"{raw.file}: column '{native}' looks like a mass that carries h. Write log10 of the mass in Msun without h"
-                f" (Msun = (Msun/h) / h) in a column '{ours}', or describe the file with a card."
+                f"{raw.file}: column '{native}' looks like a mass that carries h. Write log10 of the mass in Msun without"
+                f" h (Msun = (Msun/h) / h) in a column '{ours}', or describe the file with a card."
             )
 
 
 def _unknown_names(raw: RawTable, kind: str, found: dict[str, str]) -> list[str]:
     if kind == "bursts" and "dm_host" in {c.lower() for c in raw.columns}:
         raise InputError(
-            f"{raw.file}: column 'dm_host': rest or observed frame? Name it 'dm_host_rest' (at the source) or 'dm_host_obs'"
-            " (divided by 1+z)."
+            f"{raw.file}: column 'dm_host': rest or observed frame? Name it 'dm_host_rest' (at the source) or"
+            " 'dm_host_obs' (divided by 1+z)."
         )
     free = [ours for ours in FIELDS[kind] if ours not in found]
     notes = []
@@ -144,8 +144,8 @@ def _bare_factor(file: str, native: str, unit: str, spec: Field, values: np.ndar
     mass_like = spec.log or spec.unit in ("Mpc", "1e44 erg/s")
     if mass_like and carries_h(unit):
         raise InputError(
-            f"{file}: column '{native}' is in '{unit}', which carries h. Divide by h (Msun/h -> Msun, Mpc/h -> Mpc) and write"
-            f" '{spec.unit}', or describe the file with a card."
+            f"{file}: column '{native}' is in '{unit}', which carries h. Divide by h (Msun/h -> Msun, Mpc/h -> Mpc) and"
+            f" write '{spec.unit}', or describe the file with a card."
         )
     if spec.log or spec.unit == "dex":
         return _log_factor(file, native, unit, spec)
@@ -168,7 +168,7 @@ def _bare_factor(file: str, native: str, unit: str, spec: Field, values: np.ndar
         )
     if spec.unit == "" and parsed.is_equivalent(u.km / u.s):
         raise InputError(
-            f"{file}: column '{native}' is in '{unit}', which does not convert to a redshift. Divide the velocity by 299792.458 km/s."
+            f"{file}: column '{native}' is in '{unit}', which does not convert to a redshift. Divide by 299792.458 km/s."
         )
     try:
         return factor(unit, spec, np.nan)

@@ -47,7 +47,7 @@ class Rows:
         """Good rows; InputError where none is left."""
         if not len(self.table):
             raise InputError(
-                f"{self.table.file}: an empty list: no row{' is left after the card' if not self.table.bare else ''}. Give at least one row."
+                f"{self.table.file}: an empty list: card '{self.table.label}' leaves out every row. Give at least one."
             )
         if not self.good.any():
             r = self.refused[0]
@@ -149,7 +149,7 @@ class Rows:
             (m < lowest) | (m > highest),
             column,
             self.value(column),
-            f"log10 of a mass in Msun (no h, no 1e10 or 1e14 units) lies between {lowest:g} and {highest:g}: write that.",
+            f"log10 of a mass in Msun (no h, no 1e14 units) lies between {lowest:g} and {highest:g}: write that.",
         )
 
 

@@ -1,4 +1,4 @@
-"""The columns of our three tables: name, unit, what it is. The readers, the cards and the messages all use this list."""
+"""The columns of our three tables: name, unit, what it is. Readers, cards and messages all use this list."""
 
 from __future__ import annotations
 

@@ -81,7 +81,8 @@ def _build(cls: Any, data: dict[str, Any], path: Path, where: str) -> Any:
     for key in data:
         if key not in known:
             raise InputError(
-                f"{path}: unknown key '{key}' at {place}.{did_you_mean(key, known)} Known: {', '.join(k for k in known if k != 'path')}."
+                f"{path}: unknown key '{key}' at {place}.{did_you_mean(key, known)}"
+                f" Known: {', '.join(k for k in known if k != 'path')}."
             )
     missing = [k for k, f in known.items() if f.default is MISSING and f.default_factory is MISSING and k not in data]
     if missing:
@@ -142,7 +143,8 @@ def _check(card: Card) -> None:
     for ours, native in card.columns.items():
         if ours not in known:
             raise InputError(
-                f"{card.path}: columns.{ours} is no column of {card.kind}.{did_you_mean(ours, known)} Known: {', '.join(known)}."
+                f"{card.path}: columns.{ours} is no column of {card.kind}.{did_you_mean(ours, known)}"
+                f" Known: {', '.join(known)}."
             )
         check_unit(native.unit, known[ours], f"{card.path}: columns.{ours}.unit", card.h)
         if native.valid and len(native.valid) != 2:
@@ -156,7 +158,8 @@ def _check(card: Card) -> None:
     if card.kind == "groups":
         if "log_mass" in card.columns and not card.mass.definition and "mass_def" not in card.columns:
             raise InputError(
-                f'{card.path}: a mass without definition. Add definition = "200c" (or {", ".join(MASS_DEFINITIONS[1:])}) under [mass].'
+                f'{card.path}: a mass without definition. Add definition = "200c"'
+                f" (or {', '.join(MASS_DEFINITIONS[1:])}) under [mass]."
             )
         if "log_mass" not in card.columns and not card.proxy.use:
             raise InputError(

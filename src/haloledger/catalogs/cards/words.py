@@ -77,8 +77,8 @@ def _distance(card: Card) -> list[str]:
     words = f"Distances: error where none is given {100 * d.error_share:g}%"
     if d.velocity:
         words += (
-            f"; without a measured distance {d.velocity}/{d.hubble:g}, with the error that {d.peculiar_km_s:g} km/s make,"
-            f" at most {100 * d.largest_error_share:g}%"
+            f"; without a measured distance {d.velocity}/{d.hubble:g}, with the error that {d.peculiar_km_s:g} km/s"
+            f" make, at most {100 * d.largest_error_share:g}%"
         )
     return [words + (f" ({d.source})" if d.source else "") + "."]
 
