@@ -1,0 +1,171 @@
+"""One halo, or one galaxy, that several catalogues list, counts once.
+
+Groups. Rows are taken from heavy to light. A row inside the phase space of a heavier row of another catalogue is
+    the same halo   where the masses are within 0.7 dex and the halo has no row of the same catalogue yet: then the row
+                    with the lowest `precedence`, then the earliest catalogue, gives centre and mass;
+    a part of it    where it is lighter by more: a clump inside a cluster, which adds no halo.
+The rows of one catalogue are never compared with each other: it says itself that they are distinct.
+
+Galaxies. Mutually nearest rows of two catalogues within max(5 arcsec, 10 kpc) and 500 km/s (or at distances that agree)
+are one galaxy; the earlier catalogue describes it, what it lacks comes from the other.
+"""
+
+from __future__ import annotations
+
+import numpy as np
+
+from haloledger.cosmos.background import Cosmos
+from haloledger.haloes.distances import SPEED_OF_LIGHT_KMS, by_distance, distance_error_share, point_redshift
+from haloledger.haloes.neighbours import Places, close_pairs, separation_rad
+from haloledger.haloes.phase_space import Extent, inside
+from haloledger.haloes.table import COLUMNS, Haloes, change, join, rows
+
+COMPARABLE_DEX = 0.7
+SAME_GALAXY_ARCSEC = 5.0
+SAME_GALAXY_KPC = 10.0
+SAME_GALAXY_KMS = 500.0
+DESCRIBED = ("source_rows", "distance_mpc", "distance_err_mpc", "note")
+SAME_GALAXY_DEX = 1.0  # a dwarf beside a giant is another galaxy, however near
+
+
+def merge_groups(groups: Haloes, size: Extent) -> Haloes:
+    """Groups without doubles, in the order of id; `source_rows` keeps the rows that were put together."""
+    head, same = _join_rows(groups, size)
+    chosen = np.arange(len(groups))
+    crowds = _crowds(head)
+    for h, members in crowds.items():
+        peers = members[same[members]]
+        first = np.lexsort((groups.id[peers].astype(str), groups.catalogue[peers], groups.precedence[peers]))[0]
+        chosen[h] = peers[first]
+    heads = np.flatnonzero(head == np.arange(len(groups)))
+    merged = rows(groups, chosen[heads])
+    columns = {name: getattr(merged, name).copy() for name in DESCRIBED}
+    for k, h in enumerate(heads.tolist()):
+        if h in crowds:
+            _describe(columns, k, groups, chosen[h], crowds[h], same)
+    return rows_in_order(change(merged, **columns))
+
+
+def _crowds(head: np.ndarray) -> dict[int, np.ndarray]:
+    """Heaviest row -> all rows of its halo, for haloes with more than one."""
+    order = np.argsort(head, kind="stable")
+    names, start = np.unique(head[order], return_index=True)
+    parts = np.split(order, start[1:])
+    return {int(h): members for h, members in zip(names, parts, strict=True) if members.size > 1}
+
+
+def _join_rows(groups: Haloes, size: Extent) -> tuple[np.ndarray, np.ndarray]:
+    """Heaviest row of the halo each row belongs to, and whether the row is that halo itself (else a part of it)."""
+    n = len(groups)
+    mass = size.log_m200c
+    rank = np.empty(n, dtype=int)
+    rank[np.lexsort((groups.id.astype(str), -mass))] = np.arange(n)
+    pairs = inside(groups, size, groups, size)
+    use = (groups.catalogue[pairs.i] != groups.catalogue[pairs.j]) & (rank[pairs.i] < rank[pairs.j])
+    i, j, nearness = pairs.i[use], pairs.j[use], np.hypot(pairs.radius[use], pairs.depth[use])
+    order = np.lexsort((rank[i], nearness, rank[j]))
+    head, same = np.arange(n), np.ones(n, dtype=bool)
+    listed: dict[int, set[int]] = {}
+    done = -1
+    for a, b in zip(i[order].tolist(), j[order].tolist(), strict=True):
+        h = int(head[a])
+        if b == done or groups.catalogue[h] == groups.catalogue[b]:
+            continue
+        comparable = mass[h] - mass[b] <= COMPARABLE_DEX
+        names = listed.setdefault(h, {int(groups.catalogue[h])})
+        if comparable and int(groups.catalogue[b]) in names:
+            continue
+        head[b], same[b], done = h, comparable, b
+        if comparable:
+            names.add(int(groups.catalogue[b]))
+    return head, same
+
+
+def _describe(columns: dict[str, np.ndarray], k: int, groups: Haloes, chosen: int, members, same) -> None:
+    others = members[members != chosen]
+    others = others[np.argsort(groups.id[others].astype(str))]
+    columns["source_rows"][k] = ";".join([groups.source_rows[chosen], *groups.source_rows[others]])
+    parts = int(np.sum(~same[others]))
+    peers = others[same[others]]
+    said = [columns["note"][k]]
+    if peers.size:
+        said.append(f"also listed as {', '.join(groups.id[peers])}")
+    if parts:
+        said.append(f"holds {parts} lesser rows of other catalogues")
+    known = peers[np.isfinite(groups.distance_mpc[peers])]
+    if known.size and np.isnan(columns["distance_mpc"][k]):
+        columns["distance_mpc"][k] = groups.distance_mpc[known[0]]
+        columns["distance_err_mpc"][k] = groups.distance_err_mpc[known[0]]
+        said.append(f"distance from {groups.id[known[0]]}")
+    columns["note"][k] = "; ".join(x for x in said if x)
+
+
+def merge_galaxies(catalogues: list[Haloes], cosmos: Cosmos) -> Haloes:
+    """All galaxies, each once; catalogues in the user's order."""
+    merged = catalogues[0]
+    for extra in catalogues[1:]:
+        i, j = _same_galaxies(merged, extra, cosmos)
+        merged = _absorb(merged, i, rows(extra, j))
+        rest = np.setdiff1d(np.arange(len(extra)), j)
+        merged = join([merged, change(rows(extra, rest), notes=extra.notes)])
+    return rows_in_order(merged)
+
+
+def rows_in_order(haloes: Haloes) -> Haloes:
+    """The same haloes in the order of id."""
+    return change(rows(haloes, np.argsort(haloes.id.astype(str), kind="stable")), notes=haloes.notes)
+
+
+def _same_galaxies(a: Haloes, b: Haloes, cosmos: Cosmos) -> tuple[np.ndarray, np.ndarray]:
+    za = point_redshift(a, cosmos)
+    kpc_per_rad = cosmos.angular_distance_kpc(za)
+    radius = np.maximum(np.radians(SAME_GALAXY_ARCSEC / 3600), SAME_GALAXY_KPC / kpc_per_rad)
+    i, j = close_pairs(_window(a), _window(b), radius)
+    scale = SPEED_OF_LIGHT_KMS / (1 + za[i])
+    velocity = np.abs(a.z[i] - b.z[j]) * scale
+    allowed = np.sqrt(SAME_GALAXY_KMS**2 + (3 * scale) ** 2 * (a.z_err[i] ** 2 + b.z_err[j] ** 2))
+    both = by_distance(a)[i] & by_distance(b)[j]
+    da, db = a.distance_mpc[i], b.distance_mpc[j]
+    err = np.hypot(da * distance_error_share(a)[i], db * distance_error_share(b)[j])
+    agree = (velocity < allowed) | (both & (np.abs(da - db) <= 2 * err))
+    step = np.abs(a.log_mstar[i] - b.log_mstar[j])
+    agree &= ~(step > SAME_GALAXY_DEX)
+    apart = separation_rad(a.ra_deg[i], a.dec_deg[i], b.ra_deg[j], b.dec_deg[j])
+    return _nearest_first(i[agree], j[agree], apart[agree])
+
+
+def _window(haloes: Haloes) -> Places:
+    err = 3 * haloes.z_err + 4 * SAME_GALAXY_KMS / SPEED_OF_LIGHT_KMS
+    z = np.maximum(haloes.z, -0.01)
+    return Places(haloes.ra_deg, haloes.dec_deg, z - err, z + err)
+
+
+def _nearest_first(i, j, apart) -> tuple[np.ndarray, np.ndarray]:
+    """One-to-one pairs, the closest first."""
+    taken_i, taken_j, pairs = set(), set(), []
+    for k in np.lexsort((j, i, apart)).tolist():
+        a, b = int(i[k]), int(j[k])
+        if a not in taken_i and b not in taken_j:
+            taken_i.add(a)
+            taken_j.add(b)
+            pairs.append((a, b))
+    found = np.array(sorted(pairs), dtype=int).reshape(-1, 2)
+    return found[:, 0], found[:, 1]
+
+
+def _absorb(a: Haloes, i: np.ndarray, b: Haloes) -> Haloes:
+    """Rows i of a, each completed by its double in b."""
+    columns = {name: getattr(a, name).copy() for name in COLUMNS}
+    names = np.array([f"{x};{y}" for x, y in zip(a.source_rows[i], b.source_rows, strict=True)], dtype=object)
+    columns["source_rows"][i] = names
+    notes = a.note[i].copy()
+    for what, fill, names_filled in (
+        ("distance", np.isnan(a.distance_mpc[i]) & np.isfinite(b.distance_mpc), ("distance_mpc", "distance_err_mpc")),
+        ("spectroscopic redshift", a.photometric[i] & ~b.photometric, ("z", "z_err", "photometric", "z_posterior")),
+        ("group", (a.listed_group[i] == "") & (b.listed_group != ""), ("listed_group",)),
+    ):
+        for name in names_filled:
+            columns[name][i[fill]] = getattr(b, name)[fill]
+        notes[fill] = [f"{n}; {what} from {x}" for n, x in zip(notes[fill], b.id[fill], strict=True)]
+    columns["note"][i] = notes
+    return change(a, **columns)

@@ -1,0 +1,76 @@
+"""Draws of a halo's mass, redshift, concentration and centre: draw k of all haloes belongs to one universe.
+
+Every random number is keyed by the halo's id, every shared one by its name; what is drawn for a halo does not depend on
+which other haloes are asked for, to the last bit.
+"""
+
+from __future__ import annotations
+
+import numpy as np
+
+from haloledger.cosmos.background import Cosmos
+from haloledger.cosmos.concentration import SCATTER_DEX
+from haloledger.engine.universe import Universe
+from haloledger.haloes.masses import State, log_m200c, naive_log_m200c
+from haloledger.haloes.nuisances import log_one_minus_b, relation_of_draw, zero_point
+from haloledger.haloes.redshifts import draw_redshifts
+from haloledger.haloes.relations import load_relation
+from haloledger.haloes.table import HaloDraws, Haloes, rows
+
+
+def draw_haloes(haloes: Haloes, index, universe: Universe, c_relation: str | float, cosmos: Cosmos) -> HaloDraws:
+    """Draws of the haloes `index`.
+
+    c_relation  concentration relation of the gas model, or a number: converts masses in other definitions
+    Shapes (n_index, n_draws). With `universe.fixed` one draw with everything as given and relations read backwards.
+    """
+    part = rows(haloes, np.asarray(index, dtype=int))
+    relation, zero = relation_of_draw(universe), zero_point(universe)
+    shifts = draw_redshifts(part, universe, relation, zero, cosmos)
+    follows = np.where(part.err_holds_z[:, None], 0.0, shifts.log_l_shift)
+    offset = SCATTER_DEX * universe.normals("concentration", part.id)
+    state = State(
+        score=universe.normals("halo_mass", part.id),
+        value_score=_some_normals(universe, "stellar_mass", part.id, part.posterior & (part.mass_kind == "stellar")),
+        z=shifts.z,
+        value_shift=follows - zero,
+        log_one_minus_b=log_one_minus_b(universe, part.one_minus_b, part.one_minus_b_err),
+        log_c_offset=offset,
+    )
+    rule = naive_log_m200c if universe.fixed else log_m200c
+    moved = part.centre_err_kpc > 0
+    east, north = (
+        part.centre_err_kpc[:, None] * _some_normals(universe, f"centre_{way}", part.id, moved)
+        for way in ("east", "north")
+    )
+    mass = rule(part, state, relation, c_relation, cosmos)
+    return HaloDraws(mass, shifts.z, shifts.distance_kpc, offset, east, north, _own(part, universe))
+
+
+def relation_notes(haloes: Haloes, index, universe: Universe) -> list[str]:
+    """What has to be said of relations used beyond the redshifts they were made for, one sentence per relation."""
+    part = rows(haloes, np.asarray(index, dtype=int))
+    notes = []
+    stellar = [(name, part.mass_kind == "stellar") for name, _ in relation_of_draw(universe).columns()]
+    proxies = [(name, part.relation == name) for name in sorted(set(part.relation.tolist()) - {""})]
+    for name, uses in stellar + proxies:
+        low, high = load_relation(name).z_range
+        beyond = int(np.sum(uses & ((part.z < low - part.z_err) | (part.z > high + part.z_err))))
+        if beyond:
+            notes.append(f"{name} is used beyond its redshifts ({low:g} to {high:g}) for {beyond} haloes.")
+    return notes
+
+
+def _own(haloes: Haloes, universe: Universe) -> np.ndarray:
+    own = np.repeat((haloes.p_member < 0.5)[:, None], universe.n_draws, axis=1)
+    open_ = np.flatnonzero((haloes.p_member > 0) & (haloes.p_member < 1))
+    own[open_] = universe.uniforms("membership", haloes.id[open_]) >= haloes.p_member[open_, None]
+    return own
+
+
+def _some_normals(universe: Universe, parameter: str, ids: np.ndarray, where: np.ndarray) -> np.ndarray:
+    """Normals for the rows `where`, 0 for the others: numbers are keyed, so none is drawn that is not needed."""
+    result = np.zeros((len(ids), universe.n_draws))
+    index = np.flatnonzero(where)
+    result[index] = universe.normals(parameter, ids[index])
+    return result

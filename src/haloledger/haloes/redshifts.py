@@ -1,0 +1,125 @@
+"""Draws of the redshift that sets a halo's distance, jointly with the stellar mass where the redshift is uncertain.
+
+    P(z | data) ~ N(z_obs | z, err) x dV/dz x phi(y(z), z)
+    y(z) = log M*_obs + 2 log10[D_L(z) / D_L(z_obs)] - zero point
+
+phi is the number of galaxies of that stellar mass, from the same mass function and relation as the halo mass that is
+drawn next: the two draws together are one draw from P(M_halo, z | data). A measured distance within 50 Mpc replaces it.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from scipy.special import ndtri
+
+from haloledger.cosmos.background import Cosmos
+from haloledger.engine.universe import Universe
+from haloledger.haloes.distances import (
+    LOWEST_SHARE,
+    MIN_Z,
+    PECULIAR_KMS,
+    SPEED_OF_LIGHT_KMS,
+    by_distance,
+    distance_error_share,
+    point_luminosity_distance_mpc,
+    point_redshift,
+    z_of_luminosity_distance,
+)
+from haloledger.haloes.nuisances import RelationOfDraw
+from haloledger.haloes.posterior import U_NODES, inverse
+from haloledger.haloes.table import Haloes, rows
+
+WIDE = 0.05  # error over redshift above which a spectroscopic redshift too is drawn with its prior: the near field
+GRID = np.linspace(-5.0, 5.0, 49)  # in errors around the observed redshift
+ZERO_POINTS = np.arange(-0.4, 0.41, 0.2)
+
+
+@dataclass(frozen=True)
+class Redshifts:
+    """Draws, shape (n, n_draws)."""
+
+    z: np.ndarray
+    distance_kpc: np.ndarray  # angular-diameter
+    log_l_shift: np.ndarray  # 2 log10 of drawn over listed luminosity distance: how a mass from a flux moves
+
+
+def draw_redshifts(haloes: Haloes, universe: Universe, relation: RelationOfDraw, zero: np.ndarray, cosmos: Cosmos):
+    """Redshifts, distances and the shift of masses that rest on a flux."""
+    n, listed = len(haloes), point_redshift(haloes, cosmos)
+    listed_mpc = point_luminosity_distance_mpc(haloes, cosmos)
+    score = universe.normals("redshift", haloes.id)
+    z = np.empty((n, universe.n_draws))
+    luminosity_mpc = np.empty_like(z)
+    near = np.flatnonzero(by_distance(haloes))
+    far = np.flatnonzero(~by_distance(haloes))
+    share = np.where(universe.fixed, 0.0, distance_error_share(haloes))[near, None]
+    luminosity_mpc[near] = haloes.distance_mpc[near, None] * np.exp(share * score[near])
+    z[near] = z_of_luminosity_distance(luminosity_mpc[near], cosmos)
+    z[far] = _hubble_flow(rows(haloes, far), listed[far], score[far], universe, relation, zero, cosmos)
+    comoving_mpc = cosmos.comoving_distance_mpc(z[far])
+    luminosity_mpc[far] = comoving_mpc * (1 + z[far])
+    return Redshifts(z, 1e3 * luminosity_mpc / (1 + z) ** 2, 2 * np.log10(luminosity_mpc / listed_mpc[:, None]))
+
+
+def _hubble_flow(haloes: Haloes, listed, score, universe: Universe, relation: RelationOfDraw, zero, cosmos: Cosmos):
+    if universe.fixed:
+        return listed[:, None] + 0 * score
+    # the error of the measurement, and the speed by which the halo leaves the flow
+    err = np.hypot(haloes.z_err, PECULIAR_KMS / SPEED_OF_LIGHT_KMS * (1 + listed))
+    z = np.maximum(listed[:, None] + err[:, None] * score, np.maximum(LOWEST_SHARE * listed, MIN_Z)[:, None])
+    prior = (haloes.kind == "galaxy") & ~haloes.z_posterior & (haloes.photometric | (err > WIDE * listed))
+    joint = np.flatnonzero(prior)
+    if joint.size:
+        table = _quantiles(rows(haloes, joint), listed[joint], err[joint], relation, zero, cosmos)
+        z[joint] = _look_up(table, score[joint], relation, zero)
+    return z
+
+
+def _quantiles(haloes: Haloes, listed, err, relation: RelationOfDraw, zero, cosmos: Cosmos) -> np.ndarray:
+    """z at the normal scores U_NODES, [halo, relation, zero point, u]."""
+    low = np.maximum(np.maximum(listed - 5 * err, LOWEST_SHARE * listed), MIN_Z)
+    grid = low[:, None] + (listed + 5 * err - low)[:, None] * np.linspace(0, 1, GRID.size)
+    shift = 2 * np.log10(cosmos.luminosity_distance_mpc(grid) / cosmos.luminosity_distance_mpc(listed)[:, None])
+    ln_p = -0.5 * ((grid - listed[:, None]) / err[:, None]) ** 2 + np.log(cosmos.volume_element(grid))
+    y = np.where(haloes.err_holds_z[:, None], 0.0, shift) + haloes.value[:, None]
+    counted = ((haloes.mass_kind == "stellar") & ~haloes.posterior)[:, None, None]
+    table = np.empty((len(haloes), len(relation.names), ZERO_POINTS.size, U_NODES.size))
+    for i, name in enumerate(relation.names):
+        ln_count = inverse(name, cosmos).ln_count(
+            y[:, None] - ZERO_POINTS[:, None], grid[:, None], haloes.value_err[:, None, None]
+        )
+        table[:, i] = _invert(ln_p[:, None] + np.where(counted, ln_count, 0.0), grid[:, None])
+    return table
+
+
+def _invert(ln_p: np.ndarray, grid: np.ndarray) -> np.ndarray:
+    """Quantiles at U_NODES of densities on grids (last axis); linear in the normal score, so exact for a normal."""
+    p = np.exp(ln_p - ln_p.max(axis=-1, keepdims=True))
+    grown = np.cumsum(0.5 * (p[..., 1:] + p[..., :-1]), axis=-1)
+    grown = np.concatenate([np.zeros((*grown.shape[:-1], 1)), grown / grown[..., -1:]], axis=-1)
+    score = ndtri(np.clip(grown, 1e-6, 1 - 1e-6))
+    grid = np.broadcast_to(grid, score.shape)
+    result = np.empty((*score.shape[:-1], U_NODES.size))
+    for k, u in enumerate(U_NODES):
+        low = np.clip((score <= u).sum(axis=-1) - 1, 0, score.shape[-1] - 2)[..., None]
+        a, b = np.take_along_axis(score, low, -1), np.take_along_axis(score, low + 1, -1)
+        share = np.clip((u - a) / np.where(b > a, b - a, 1.0), 0.0, 1.0)
+        za, zb = np.take_along_axis(grid, low, -1), np.take_along_axis(grid, low + 1, -1)
+        result[..., k] = (za + share * (zb - za))[..., 0]
+    return result
+
+
+def _look_up(table: np.ndarray, score: np.ndarray, relation: RelationOfDraw, zero: np.ndarray) -> np.ndarray:
+    """Bilinear in zero point and normal score; (n, n_draws)."""
+    at = np.clip((zero - ZERO_POINTS[0]) / (ZERO_POINTS[1] - ZERO_POINTS[0]), 0, ZERO_POINTS.size - 1)
+    i = np.minimum(at.astype(int), ZERO_POINTS.size - 2)
+    up = np.clip((score - U_NODES[0]) / (U_NODES[1] - U_NODES[0]), 0, U_NODES.size - 1)
+    j = np.minimum(up.astype(int), U_NODES.size - 2)
+    wi, wj = at - i, up - j
+    halo = np.arange(len(table))[:, None]
+    r = relation.index
+    lower = (1 - wj) * table[halo, r, i, j] + wj * table[halo, r, i, j + 1]
+    upper = (1 - wj) * table[halo, r, i + 1, j] + wj * table[halo, r, i + 1, j + 1]
+    return (1 - wi) * lower + wi * upper

@@ -1,0 +1,78 @@
+"""The two tables of this package: the list of haloes, and their draws."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, fields
+
+import numpy as np
+
+
+@dataclass(frozen=True)
+class Haloes:
+    """One row per halo; all arrays have the shape (n,). Made by `build.halo_list`, in the order of `id`."""
+
+    id: np.ndarray  # "label:id" of the row that gives centre and mass
+    kind: np.ndarray  # "galaxy" or "group"
+    source_rows: np.ndarray  # all rows that name this halo, ";"-joined, the first is id
+    ra_deg: np.ndarray
+    dec_deg: np.ndarray
+    z: np.ndarray  # as listed; from the distance where only that is known
+    z_err: np.ndarray
+    photometric: np.ndarray  # bool
+    distance_mpc: np.ndarray  # luminosity distance, NaN where none
+    distance_err_mpc: np.ndarray
+    log_mstar: np.ndarray  # NaN for groups
+    p_member: np.ndarray  # probability that a listed group holds this galaxy: then it has no halo of its own
+    centre_err_kpc: np.ndarray  # 1 sigma per axis
+    note: np.ndarray
+    # how the mass is known
+    mass_kind: np.ndarray  # "stellar" "m200c" "mass" "proxy"
+    value: np.ndarray  # log10 of stellar mass, halo mass or proxy
+    value_err: np.ndarray  # dex
+    relation: np.ndarray  # name of the proxy's relation, "" where none
+    mass_def: np.ndarray
+    posterior: np.ndarray  # bool: the value is a posterior already, no mass function is put on it
+    z_posterior: np.ndarray  # bool: the redshift is a posterior already, no volume is put on it
+    err_holds_z: np.ndarray  # bool: value_err contains the redshift error: the value does not follow the drawn redshift
+    one_minus_b: np.ndarray  # hydrostatic bias: the mass is divided by it
+    one_minus_b_err: np.ndarray
+    catalogue: np.ndarray  # int: place of the catalogue among the user's
+    precedence: np.ndarray  # int: lower gives centre and mass where two catalogues name one halo
+    listed_group: np.ndarray  # "label:id" of the group the catalogue puts this galaxy in, "" where none
+    notes: tuple[str, ...] = ()
+
+    def __len__(self) -> int:
+        return len(self.id)
+
+
+@dataclass(frozen=True)
+class HaloDraws:
+    """Draws of haloes; all arrays have the shape (n_index, n_draws)."""
+
+    log_m200c: np.ndarray
+    z: np.ndarray  # sets the distance: peculiar velocity or distance error included
+    distance_kpc: np.ndarray  # angular-diameter distance, proper kpc per radian
+    log_c_offset: np.ndarray  # dex
+    centre_east_kpc: np.ndarray
+    centre_north_kpc: np.ndarray
+    own: np.ndarray  # bool: has a halo of its own in this draw
+
+
+def rows(haloes: Haloes, index) -> Haloes:
+    """The haloes `index`."""
+    return change(haloes, **{name: getattr(haloes, name)[index] for name in COLUMNS})
+
+
+def change(haloes: Haloes, **columns) -> Haloes:
+    """The same haloes with other columns."""
+    values = {f.name: getattr(haloes, f.name) for f in fields(haloes)}
+    return Haloes(**{**values, **columns})
+
+
+def join(parts: list[Haloes]) -> Haloes:
+    """The haloes of all parts, one after the other, their notes too."""
+    columns = {name: np.concatenate([getattr(p, name) for p in parts]) for name in COLUMNS}
+    return Haloes(**columns, notes=tuple(note for p in parts for note in p.notes))
+
+
+COLUMNS = tuple(f.name for f in fields(Haloes) if f.name != "notes")
