@@ -159,23 +159,46 @@ def test_mean_cosmic_dm_is_the_closed_integral(tables):
         assert row["dm_cosmic_mean_z"].to_value(PC_CM3) == pytest.approx(976.040073 * 0.84 * integral, abs=0.01)
 
 
-def test_halo_columns_agree_with_adaptive_quadrature(script):
+def column_by_quadrature(script, log_m: float, z: float, x: float, start: float | None) -> float:
+    """Observer-frame DM of one halo, integrals by scipy and constants by astropy."""
     from astropy import constants, units
     from astropy.cosmology import Planck18
     from scipy.integrate import quad
 
-    electron = 7 / 8 * (constants.M_sun / constants.m_p / units.kpc**3).to_value("cm-3")
-    for log_m, z, x, start in ((14.5, 0.112, 0.2, None), (12.3, 0.081, 0.5, None), (13.7, 0.17, 0.35, 0.0)):
-        c, r200 = float(script["concentration"](log_m, z)), r200c_kpc(log_m, z)
-        mass = float(script["kept"](log_m)) * Planck18.Ob0 / Planck18.Om0 * 10**log_m
-        shape = lambda r, c=c: c * r / (2 + c * r) ** 4  # noqa: E731
-        norm = mass / (4 * np.pi * r200**3 * quad(lambda r: r**2 * shape(r), 0, 1)[0])
-        half = np.sqrt(1 - x**2)
-        column = quad(lambda s: shape(np.hypot(x, s)), -half if start is None else start, half)[0]
-        expected = electron * norm * column * r200 * 1000 / (1 + z)
-        got = script["halo_dm"](np.array([x]), np.array([log_m]), np.array([z]), np.array([1.0]), start)
-        # r200c is interpolated on a grid of 0.0005 in z, good to 1e-6; 64 nodes are good to 1e-6 on this shape
-        assert got[0] == pytest.approx(expected, rel=1e-5)
+    c, r200 = float(script["concentration"](log_m, z)), r200c_kpc(log_m, z)
+    electrons = 7 / 8 * (constants.M_sun / constants.m_p / units.kpc**3).to_value("cm-3")
+    gas_mass = float(script["kept"](log_m)) * Planck18.Ob0 / Planck18.Om0 * 10**log_m
+
+    def shape(r: float) -> float:
+        return c * r / (2 + c * r) ** 4
+
+    half = np.sqrt(1 - x**2)
+    column = quad(lambda s: shape(np.hypot(x, s)), -half if start is None else start, half)[0]
+    norm = gas_mass / (4 * np.pi * r200**3 * quad(lambda r: r**2 * shape(r), 0, 1)[0])
+    return electrons * norm * column * r200 * 1000 / (1 + z)
+
+
+@pytest.mark.parametrize(
+    ("log_m", "z", "x", "start"), [(14.5, 0.112, 0.2, None), (12.3, 0.081, 0.5, None), (13.7, 0.17, 0.35, 0.0)]
+)
+def test_halo_columns_agree_with_adaptive_quadrature(script, log_m, z, x, start):
+    got = script["halo_dm"](np.array([x]), np.array([log_m]), np.array([z]), np.array([1.0]), start)
+    # r200c is interpolated on a grid of 0.0005 in z, good to 1e-6; 64 nodes are good to 1e-6 on this shape
+    assert got[0] == pytest.approx(column_by_quadrature(script, log_m, z, x, start), rel=1e-5)
+
+
+def test_the_readers_take_every_row(tables):
+    from haloledger.catalogs import read_bursts, read_galaxies, read_groups
+
+    bursts = read_bursts(str(FOLDER / "bursts.ecsv"))
+    galaxies = read_galaxies(str(FOLDER / "galaxies.ecsv"))
+    groups = read_groups(str(FOLDER / "groups.ecsv"))
+    for read, name in ((bursts, "bursts"), (galaxies, "galaxies"), (groups, "groups")):
+        assert read.refused == ()
+        assert len(read) == len(tables[name])
+    assert np.isnan(bursts.dm_disc).any()
+    assert (galaxies.group != "").sum() > 200
+    assert groups.mass_def == "200c"
 
 
 # ---------------------------------------------------------------- the eight roles
