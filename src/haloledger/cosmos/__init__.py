@@ -1,1 +1,1 @@
-"""Distances, mass definitions, mean cosmic DM and its scatter, halo mass function. Knows nothing of catalogues or gas."""
+"""Distances, mass definitions, mean cosmic DM and its scatter, mass function. Knows nothing of catalogues or gas."""

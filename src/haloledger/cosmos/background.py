@@ -95,7 +95,5 @@ def cosmology(name: str = "Planck18") -> Cosmos:
         )
     exact = getattr(library, name)
     if not exact.is_flat:
-        raise InputError(
-            f"--cosmology: '{name}' is not flat; distances here are for flat space. Use Planck18."
-        )
+        raise InputError(f"--cosmology: '{name}' is not flat; distances here are for flat space. Use Planck18.")
     return Cosmos(name, exact)

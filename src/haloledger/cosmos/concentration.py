@@ -38,12 +38,8 @@ def concentration(relation: str | float, log_m200c, z, cosmos: Cosmos) -> np.nda
     if isinstance(relation, int | float):
         return np.full(shape, float(relation))
     if relation not in RELATIONS:
-        raise InputError(
-            f"concentration '{relation}' is not known. Write one of {', '.join(RELATIONS)}, or a number."
-        )
-    points = np.stack(
-        np.broadcast_arrays(np.clip(log_m200c, LOG_M[0], LOG_M[-1]), np.clip(z, Z[0], Z[-1])), axis=-1
-    )
+        raise InputError(f"concentration '{relation}' is not known. Write one of {', '.join(RELATIONS)}, or a number.")
+    points = np.stack(np.broadcast_arrays(np.clip(log_m200c, LOG_M[0], LOG_M[-1]), np.clip(z, Z[0], Z[-1])), axis=-1)
     return np.exp(_table(relation, cosmos.name)(points))
 
 
@@ -55,7 +51,6 @@ def _table(relation: str, cosmology_name: str) -> RegularGridInterpolator:
     with colossus_cosmology(cosmos):
         model = RELATIONS[relation][0]
         rows = [
-            library.concentration(10**LOG_M * cosmos.h, "200c", float(z), model=model, range_return=False)
-            for z in Z
+            library.concentration(10**LOG_M * cosmos.h, "200c", float(z), model=model, range_return=False) for z in Z
         ]
     return RegularGridInterpolator((LOG_M, Z), np.log(np.array(rows).T))

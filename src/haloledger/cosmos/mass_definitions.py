@@ -1,8 +1,8 @@
 """The same halo in other mass definitions, for an NFW mass profile.
 
 The ratio of two masses depends on concentration alone (500c) or on concentration and redshift (200m, 180m, vir). It is
-tabulated from colossus and interpolated, so that a million draws cost nothing. 180m is the definition of halo-based group
-finders (180 times the mean density).
+tabulated from colossus and interpolated, so that a million draws cost nothing. 180m (180 times the mean density) is the
+definition of halo-based group finders.
 """
 
 from __future__ import annotations
@@ -27,13 +27,11 @@ def from_200c(log_m200c, mass_def: str, z, c200c, cosmos: Cosmos) -> np.ndarray:
     return np.asarray(log_m200c) + _log_ratio(mass_def, z, c200c, cosmos)
 
 
-def to_200c(
-    log_mass, mass_def: str, z, relation: str | float, cosmos: Cosmos, log_c_offset=0.0
-) -> np.ndarray:
+def to_200c(log_mass, mass_def: str, z, relation: str | float, cosmos: Cosmos, log_c_offset=0.0) -> np.ndarray:
     """log10 M200c of a halo whose mass is given in `mass_def`; shapes broadcast.
 
-    The concentration is the relation's at M200c, moved by `log_c_offset` [dex]: solved by fixed-point steps, each of which
-    shrinks the error by more than ten, since concentration hangs weakly on mass.
+    The concentration is the relation's at M200c, moved by `log_c_offset` [dex]: solved by fixed-point steps, each of
+    which shrinks the error by more than ten, since concentration hangs weakly on mass.
     """
     log_m200c = np.asarray(log_mass, dtype=float) + 0 * np.asarray(z) + 0 * np.asarray(log_c_offset)
     if mass_def == "200c":

@@ -1,0 +1,1 @@
+"""Entries, their sum, the budget. Knows nothing of files and screens."""

@@ -1,7 +1,7 @@
 """The diffuse term: what is left of the mean cosmic DM when the haloes' gas is taken out, and its scatter.
 
-Gas is conserved: diffuse = total - haloes, in every draw. The named scatter describes the total, so the diffuse width is
-solved, per model and redshift, such that diffuse + haloes on random lines has the total's 16-84 width.
+Gas is conserved: diffuse = total - haloes, in every draw. The named scatter describes the total, so the diffuse width
+is solved, per model and redshift, such that diffuse + haloes on random lines has the total's 16-84 width.
 """
 
 from __future__ import annotations
@@ -17,7 +17,9 @@ from haloledger.reach.census import Census
 
 FLOOR_LN = 0.05
 """Least log-normal width of the diffuse term, used where haloes alone already spread more than the named total."""
-Z_NODES = np.array([0.003, 0.01, 0.02, 0.04, 0.07, 0.1, 0.15, 0.2, 0.3, 0.4, 0.5, 0.7, 0.9, 1.2, 1.6, 2.0, 2.5, 3.0, 4.0])
+Z_NODES = np.array(
+    [0.003, 0.01, 0.02, 0.04, 0.07, 0.1, 0.15, 0.2, 0.3, 0.4, 0.5, 0.7, 0.9, 1.2, 1.6, 2.0, 2.5, 3.0, 4.0]
+)
 LEAST_SHARE = 0.02
 """The diffuse mean never falls below this share of the total."""
 

@@ -24,6 +24,7 @@ class Sightline:
     ra_deg: float
     dec_deg: float
     z_given: float  # NaN where the redshift is drawn from P(z | DM)
+    dm_given: float
     directions: np.ndarray  # unit vectors (n_draws, 3)
     z: np.ndarray  # redshift that sets the distance
     dm: np.ndarray  # observed DM [pc cm-3]

@@ -49,8 +49,8 @@ def impact_parameters(
 ) -> tuple[np.ndarray, np.ndarray]:
     """Closest approach of a line of sight to halo centres, and how far in front of us it lies.
 
-    b = D sin(angle) as its east and north components, each moved by the centre's offset; the closest approach is D cos(angle)
-    away from the observer (negative: behind us).
+    b = D sin(angle) as its east and north components, each moved by the centre's offset; the closest approach is
+    D cos(angle) away from the observer (negative: behind us).
 
     ra_deg, dec_deg      nominal halo centres (m,)
     distance_kpc         proper kpc per radian (m, k)

@@ -26,7 +26,7 @@ def mw_disc(
 ) -> tuple[np.ndarray, str]:
     """Milky Way disc DM draws [pc cm-3] (n_draws,), and how they came about.
 
-    One global nuisance scales the disc in every direction. `electron_model(l_deg, b_deg)` gives a published model's value.
+    One global nuisance scales the disc in every direction. `electron_model(l_deg, b_deg)` gives a published value.
     """
     given, error = bursts.dm_disc[i], bursts.dm_disc_err[i]
     if np.isfinite(given):

@@ -1,0 +1,136 @@
+"""From draws to the rows of the two tables."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from haloledger.gas.models import Model
+from haloledger.haloes.build import Haloes
+from haloledger.ledger.budget import CIRCULAR, TERMS
+from haloledger.ledger.columns import STATISTICS
+from haloledger.ledger.crossing import Crossing
+from haloledger.ledger.shares import mean_shares, variance_shares
+from haloledger.sightlines.draws import Sightline
+from haloledger.sightlines.geometry import separation_deg
+
+QUANTILES = (0.16, 0.5, 0.84)
+
+
+def statistics(draws: np.ndarray) -> dict[str, np.ndarray]:
+    """Mean and 16, 50, 84% points over the last axis, by the names of STATISTICS."""
+    low, middle, high = np.quantile(draws, QUANTILES, axis=-1)
+    return dict(zip(STATISTICS, (draws.mean(axis=-1), low, middle, high), strict=True))
+
+
+def sightline_row(
+    sightline: Sightline, model: Model, terms: dict[str, np.ndarray], n_haloes: int, crossed: float, reach: float, note
+) -> dict:
+    """One row of the sightlines table; None is masked."""
+    row: dict = {
+        "burst": sightline.burst,
+        "model": model.name,
+        "ra": sightline.ra_deg,
+        "dec": sightline.dec_deg,
+        "z": _or_none(sightline.z_given),
+        "dm": sightline.dm_given,
+    }
+    for term in TERMS:
+        circular = np.isnan(sightline.z_given) and term in CIRCULAR
+        for name, value in statistics(terms[term]).items():
+            row[f"{term}_{name}"] = None if circular else float(value)
+    return row | {
+        "n_haloes": n_haloes,
+        "n_crossed_mean": crossed,
+        "reach": _or_none(reach),
+        "control_p": None,
+        "verdict": None,
+        "reasons": None,
+        "note": "; ".join(note),
+    }
+
+
+def entry_rows(
+    sightline: Sightline, model: Model, haloes: Haloes, crossing: Crossing, dm: np.ndarray, shared: list[np.ndarray]
+) -> list[dict]:
+    """Rows of the entries table for one sightline and model: crossed haloes by falling mean DM, then `shared`.
+
+    dm  (n_haloes, n_draws); haloes that no draw crosses are left out.
+    """
+    foreground = ~crossing.at_source
+    share = np.ma.masked_all(len(dm))
+    share[foreground] = mean_shares(dm[foreground])
+    own = np.full(len(dm), np.nan)
+    own[foreground], rest = variance_shares(dm[foreground], shared)
+    crossed = np.flatnonzero((dm > 0).any(axis=1))
+    order = crossed[np.lexsort((haloes.id[crossing.index[crossed]], -dm[crossed].mean(axis=1)))]
+    rows = [_entry_row(i, sightline, model, haloes, crossing, dm[i], share[i], own[i]) for i in order]
+    if foreground[crossed].any():
+        rows.append({"burst": sightline.burst, "model": model.name, "halo": "shared", "variance_share": rest})
+    return rows
+
+
+def _entry_row(i, sightline, model, haloes, crossing: Crossing, dm, share, own) -> dict:
+    h = crossing.index[i]
+    mass, impact, gas = (statistics(a) for a in (crossing.log_m200c[i], crossing.impact_kpc[i], dm))
+    separation = separation_deg(haloes.ra_deg[h], haloes.dec_deg[h], sightline.ra_deg, sightline.dec_deg)
+    boundary = np.median(
+        np.arcsin(np.minimum(model.boundary_r200c * crossing.r200c_kpc[i] / crossing.distance_kpc[i], 1))
+    )
+    return {
+        "burst": sightline.burst,
+        "model": model.name,
+        "halo": str(haloes.id[h]),
+        "kind": str(haloes.kind[h]),
+        "source_rows": str(haloes.source_rows[h]),
+        "ra": float(haloes.ra_deg[h]),
+        "dec": float(haloes.dec_deg[h]),
+        "z": _or_none(haloes.z[h]),
+        "z_kind": _z_kind(haloes, h),
+        "log_mstar": _or_none(haloes.log_mstar[h]),
+        "log_m200c_p16": float(mass["p16"]),
+        "log_m200c_p50": float(mass["p50"]),
+        "log_m200c_p84": float(mass["p84"]),
+        "r200c_kpc": float(np.median(crossing.r200c_kpc[i])),
+        "sep_arcmin": float(separation * 60),
+        "impact_kpc_p16": float(impact["p16"]),
+        "impact_kpc_p50": float(impact["p50"]),
+        "impact_kpc_p84": float(impact["p84"]),
+        "impact_r200c": float(np.median(crossing.impact_r200c[i])),
+        "p_front": float((crossing.behind_kpc[i] > 0).mean()),
+        "p_member": float(haloes.p_member[h]),
+        "p_crossed": float((dm > 0).mean()),
+        "dm_mean": float(gas["mean"]),
+        "dm_p16": float(gas["p16"]),
+        "dm_p50": float(gas["p50"]),
+        "dm_p84": float(gas["p84"]),
+        "dm_crossed_p50": float(np.median(dm[dm > 0])),
+        "share": None if np.ma.is_masked(share) else float(share),
+        "variance_share": None if crossing.at_source[i] else float(own),
+        "boundary_arcmin": float(np.degrees(boundary) * 60),
+        "note": "; ".join(_entry_notes(i, h, model, haloes, crossing)),
+    }
+
+
+def _entry_notes(i, h, model: Model, haloes: Haloes, crossing: Crossing) -> list[str]:
+    notes = [str(haloes.note[h])] if haloes.note[h] else []
+    low, high = model.log_mass_range
+    outside = float(((crossing.log_m200c[i] < low) | (crossing.log_m200c[i] > high)).mean())
+    if outside > 0.16:
+        notes.append(f"{outside:.0%} of draws outside the model's mass range 1e{low:g}-1e{high:g} Msun")
+    z_low, z_high = model.z_range
+    z_outside = float(((crossing.z[i] < z_low) | (crossing.z[i] > z_high)).mean())
+    if z_outside > 0.16:
+        notes.append(f"outside the model's redshift range {z_low:g}-{z_high:g}")
+    if crossing.at_source[i]:
+        notes.append("the burst sits in this halo: outside the foreground sum, depth drawn")
+    return notes
+
+
+def _z_kind(haloes: Haloes, h: int) -> str:
+    if np.isfinite(haloes.distance_mpc[h]):
+        return "distance"
+    return "phot" if haloes.photometric[h] else "spec"
+
+
+def _or_none(value) -> float | None:
+    return float(value) if np.isfinite(value) else None

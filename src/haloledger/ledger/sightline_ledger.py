@@ -1,0 +1,235 @@
+"""One sightline after the other: its haloes, its entries, its budget, for every model."""
+
+from __future__ import annotations
+
+import itertools
+from collections.abc import Callable
+from dataclasses import dataclass
+
+import numpy as np
+
+from haloledger.catalogs.canonical import Bursts
+from haloledger.cosmos.background import Cosmos
+from haloledger.engine.universe import Universe
+from haloledger.gas.models import Model
+from haloledger.haloes.build import Haloes, mass_ceiling
+from haloledger.haloes.distances import z_floor
+from haloledger.haloes.draws import relation_notes
+from haloledger.ledger.budget import Ends, budget
+from haloledger.ledger.crossing import Crossing, cross
+from haloledger.ledger.entries import halo_dm
+from haloledger.ledger.kept import census_factor
+from haloledger.ledger.nuisances import shared_columns
+from haloledger.ledger.rows import entry_rows, sightline_row
+from haloledger.reach.census import Census, take_census
+from haloledger.reach.coverage import reach_of
+from haloledger.reach.diffuse import DiffuseWidth, solve_width
+from haloledger.sightlines.draws import Sightline, directions, given_redshift, observed_dm
+from haloledger.sightlines.host import holds_burst, is_host
+from haloledger.sightlines.near import near_pairs
+from haloledger.sightlines.redshift import redshift_from_dm
+from haloledger.sightlines.terms import host_obs, host_rest, mw_disc, mw_halo
+
+SIGMAS = 5.0
+"""Localisation and centre errors are searched out to this many sigma."""
+LOCAL_Z = 0.012
+"""Below it a distance taken from the redshift alone is poor (50 Mpc)."""
+
+
+@dataclass(frozen=True)
+class GasGround:
+    """What is made once for a model: its census and the width of the diffuse term beside it."""
+
+    model: Model
+    census: Census
+    census_factor: np.ndarray
+    width: DiffuseWidth
+
+
+@dataclass(frozen=True)
+class Ground:
+    """What all sightlines share."""
+
+    bursts: Bursts
+    haloes: Haloes
+    near: list[np.ndarray]  # halo rows that could touch burst i
+    gas: list[GasGround]
+    footprints: list
+    universe: Universe
+    cosmos: Cosmos
+    electrons: Callable[[float, float], float] | None
+    shared: list[np.ndarray]
+
+
+@dataclass(frozen=True)
+class Ledger:
+    """The ledger of one sightline and model, as rows; draws only where they were asked for."""
+
+    burst: str
+    model: str
+    row: dict
+    entries: list[dict]
+    terms: dict[str, np.ndarray] | None
+    entry_draws: list[dict] | None
+
+
+def prepare(
+    bursts: Bursts, haloes: Haloes, gas: list[Model], footprints: list, universe: Universe, cosmos: Cosmos, electrons
+) -> Ground:
+    """Everything that is made once: who is near whom, and each model's census."""
+    return Ground(
+        bursts=bursts,
+        haloes=haloes,
+        near=_near(bursts, haloes, max(m.boundary_r200c for m in gas), cosmos),
+        gas=[_gas_ground(m, universe, cosmos) for m in gas],
+        footprints=footprints,
+        universe=universe,
+        cosmos=cosmos,
+        electrons=electrons,
+        shared=shared_columns(universe),
+    )
+
+
+def make_ledger(ground: Ground, i: int, keep_draws: bool = False) -> list[Ledger]:
+    """The ledgers of burst i, one a model."""
+    sightline, ends, note = _sightline(ground, i)
+    index = ground.near[i]
+    index = index[~is_host(ground.bursts, i, ground.haloes, index)]
+    reach, said = reach_of(sightline.ra_deg, sightline.dec_deg, ground.footprints)
+    note = [*note, said, *relation_notes(ground.haloes, index, ground.universe)]
+    crossings: dict[str | float, Crossing] = {}
+    ledgers = []
+    for gas in ground.gas:
+        relation = gas.model.concentration
+        if relation not in crossings:
+            crossings[relation] = _cross(ground, i, sightline, index, relation)
+        ledgers.append(_one_model(ground, gas, sightline, ends, crossings[relation], reach, note, keep_draws))
+    return ledgers
+
+
+def _near(bursts: Bursts, haloes: Haloes, boundary_r200c: float, cosmos: Cosmos) -> list[np.ndarray]:
+    z = z_floor(haloes, cosmos)
+    reach_kpc = boundary_r200c * cosmos.r200c_kpc(mass_ceiling(haloes, cosmos), z) + SIGMAS * haloes.centre_err_kpc
+    radius = np.degrees(np.arcsin(np.minimum(reach_kpc / cosmos.angular_distance_kpc(z), 1.0)))
+    margin = SIGMAS * np.nan_to_num(bursts.loc_major_arcsec) / 3600
+    burst, halo = near_pairs(bursts.ra_deg, bursts.dec_deg, margin, haloes.ra_deg, haloes.dec_deg, radius)
+    latest = bursts.z + SIGMAS * np.nan_to_num(bursts.z_err) + 0.01 * (1 + bursts.z)
+    in_front = ~(z[halo] > latest[burst])  # written so that a burst without redshift keeps all
+    burst, halo = burst[in_front], halo[in_front]
+    edges = np.searchsorted(burst, np.arange(len(bursts) + 1))
+    return [halo[a:b] for a, b in itertools.pairwise(edges)]
+
+
+def _gas_ground(model: Model, universe: Universe, cosmos: Cosmos) -> GasGround:
+    census = take_census(model, cosmos, universe.seed)
+    return GasGround(model, census, census_factor(model, universe, cosmos), solve_width(census, cosmos))
+
+
+def _sightline(ground: Ground, i: int) -> tuple[Sightline, Ends, list[str]]:
+    bursts, universe = ground.bursts, ground.universe
+    disc, disc_said = mw_disc(bursts, i, universe, ground.electrons)
+    halo, halo_said = mw_halo(bursts, i, universe)
+    dm = observed_dm(bursts, i, universe)
+    name = str(bursts.burst[i])
+    note = [str(bursts.note[i])] if bursts.note[i] else []
+    if np.isfinite(bursts.z[i]):
+        z = given_redshift(bursts, i, universe)
+    else:
+        host, _ = _host_guess(bursts, i, universe)
+        z = redshift_from_dm(name, dm, disc + halo, host, universe, ground.cosmos)
+        note.append(f"redshift drawn from P(z | DM), median {np.median(z):.2f}: no residual is given")
+    host, host_said = host_obs(bursts, i, z, universe)
+    sightline = Sightline(
+        burst=name,
+        ra_deg=float(bursts.ra_deg[i]),
+        dec_deg=float(bursts.dec_deg[i]),
+        z_given=float(bursts.z[i]),
+        dm_given=float(bursts.dm[i]),
+        directions=directions(bursts, i, universe),
+        z=z,
+        dm=dm,
+        loc_arcsec=float(np.nan_to_num(bursts.loc_major_arcsec[i])),
+        note="",
+    )
+    return sightline, Ends(disc, halo, host), [*note, disc_said, halo_said, host_said]
+
+
+def _host_guess(bursts: Bursts, i: int, universe: Universe) -> tuple[np.ndarray, str]:
+    """Host draws before the redshift is known; an observer-frame value is taken at z = 0."""
+    rest, said = host_rest(bursts, i, universe)
+    if np.isnan(rest).any():
+        return host_obs(bursts, i, np.zeros(universe.n_draws), universe)
+    return rest, said
+
+
+def _cross(ground: Ground, i: int, sightline: Sightline, index: np.ndarray, relation) -> Crossing:
+    nobody = np.zeros(len(index), bool)
+    crossing = cross(sightline, ground.haloes, index, nobody, relation, ground.universe, ground.cosmos)
+    typical = np.median(crossing.log_m200c, axis=1)
+    inside = holds_burst(ground.bursts, i, ground.haloes, index, typical, ground.cosmos)
+    if not inside.any():
+        return crossing
+    return cross(sightline, ground.haloes, index, inside, relation, ground.universe, ground.cosmos)
+
+
+def _one_model(
+    ground: Ground,
+    gas: GasGround,
+    sightline: Sightline,
+    ends: Ends,
+    crossing: Crossing,
+    reach: float,
+    note: list[str],
+    keep_draws: bool,
+) -> Ledger:
+    ids = ground.haloes.id[crossing.index]
+    dm = halo_dm(crossing, ids, gas.model, ground.universe, ground.cosmos)
+    front = ~crossing.at_source
+    crossed = dm[front] > 0
+    terms = budget(
+        sightline,
+        ends,
+        dm[front].sum(axis=0),
+        dm[~front].sum(axis=0),
+        gas.census,
+        gas.census_factor,
+        gas.width,
+        reach,
+        ground.universe,
+        ground.cosmos,
+    )
+    said = [*note, *_model_notes(gas, sightline, crossing, dm)]
+    row = sightline_row(
+        sightline, gas.model, terms, int(crossed.any(axis=1).sum()), float(crossed.sum(axis=0).mean()), reach, said
+    )
+    return Ledger(
+        burst=sightline.burst,
+        model=gas.model.name,
+        row=row,
+        entries=entry_rows(sightline, gas.model, ground.haloes, crossing, dm, ground.shared),
+        terms=terms if keep_draws else None,
+        entry_draws=_entry_draws(sightline, gas.model, ids, crossing, dm) if keep_draws else None,
+    )
+
+
+def _model_notes(gas: GasGround, sightline: Sightline, crossing: Crossing, dm: np.ndarray) -> list[str]:
+    notes = []
+    if np.isfinite(sightline.z_given) and gas.width.floored_at(sightline.z_given):
+        notes.append("haloes of this model alone scatter more than the named total: diffuse scatter at its floor")
+    if crossing.at_source.any() and (dm[crossing.at_source] > 0).any():
+        notes.append("the burst sits in a listed halo: its DM is at the source, the default host prior may repeat some")
+    return notes
+
+
+def _entry_draws(sightline, model, ids, crossing: Crossing, dm: np.ndarray) -> list[dict]:
+    return [
+        {
+            "burst": sightline.burst,
+            "model": model.name,
+            "halo": str(ids[i]),
+            "log_m200c": crossing.log_m200c[i],
+            "impact_kpc": crossing.impact_kpc[i],
+            "dm": dm[i],
+        }
+        for i in np.flatnonzero((dm > 0).any(axis=1))
+    ]

@@ -1,0 +1,68 @@
+"""Which listed objects are the host itself, and which haloes the burst sits in."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from haloledger.catalogs.canonical import Bursts
+from haloledger.cosmos.background import Cosmos
+from haloledger.haloes.distances import by_distance, point_redshift
+from haloledger.haloes.relations import load_relation
+from haloledger.haloes.table import Haloes
+from haloledger.sightlines.draws import LIGHT_KMS, PECULIAR_KMS
+from haloledger.sightlines.geometry import separation_deg
+
+LEAST_ARCSEC = 2.0
+"""A galaxy this close to a well localised burst, at its redshift, is taken as the host."""
+WIDEST_ARCSEC = 20.0
+"""A poor localisation does not turn every galaxy inside it into the host."""
+WIDEST_Z_ERR = 0.012
+"""A group with a larger redshift error, over 1 + z, cannot be said to hold the burst."""
+
+
+def is_host(bursts: Bursts, i: int, haloes: Haloes, index: np.ndarray) -> np.ndarray:
+    """Rows of `index` that are the host galaxy of burst i: by host_id, or by position and redshift; (n_index,) bool."""
+    rows = haloes.source_rows[index]
+    wanted = str(bursts.host[i])
+    if wanted:
+        named = [wanted in _names(r) for r in rows]
+        if any(named):
+            return np.array(named)
+    if np.isnan(bursts.z[i]):
+        return np.zeros(len(index), bool)
+    radius = np.clip(3 * np.nan_to_num(bursts.loc_major_arcsec[i]), LEAST_ARCSEC, WIDEST_ARCSEC)
+    apart = separation_deg(haloes.ra_deg[index], haloes.dec_deg[index], bursts.ra_deg[i], bursts.dec_deg[i]) * 3600
+    gap = np.abs(haloes.z[index] - bursts.z[i])
+    error = np.sqrt(haloes.z_err[index] ** 2 + np.nan_to_num(bursts.z_err[i]) ** 2 + (PECULIAR_KMS / LIGHT_KMS) ** 2)
+    return (haloes.kind[index] == "galaxy") & (apart <= radius) & (gap <= 3 * error)
+
+
+def holds_burst(
+    bursts: Bursts, i: int, haloes: Haloes, index: np.ndarray, log_m200c: np.ndarray, cosmos: Cosmos
+) -> np.ndarray:
+    """Haloes of `index` in whose projected phase space burst i lies; (n_index,) bool.
+
+    Inside r200c on the sky and within 3 sigma_v of the redshift. log_m200c (n_index,): a typical mass of each.
+    """
+    z = bursts.z[i]
+    if np.isnan(z):
+        return np.zeros(len(index), bool)
+    z_halo = point_redshift(haloes, cosmos)[index]
+    # a velocity is compared with the listed redshift where there is one, since it is what both share
+    z_listed = np.where(np.isfinite(haloes.z[index]), haloes.z[index], z_halo)
+    angle = separation_deg(haloes.ra_deg[index], haloes.dec_deg[index], bursts.ra_deg[i], bursts.dec_deg[i])
+    impact_kpc = cosmos.angular_distance_kpc(z_halo) * np.sin(np.radians(np.minimum(angle, 90.0)))
+    sigma_kms = 10 ** load_relation("evrard2008").mean(log_m200c, z_halo, cosmos)
+    error = np.sqrt(haloes.z_err[index] ** 2 + np.nan_to_num(bursts.z_err[i]) ** 2)
+    allowed = 3 * np.sqrt((sigma_kms / LIGHT_KMS * (1 + z)) ** 2 + error**2)
+    sharp = (error <= WIDEST_Z_ERR * (1 + z)) & ~(haloes.photometric[index] & (haloes.kind[index] == "galaxy"))
+    near = impact_kpc <= cosmos.r200c_kpc(log_m200c, z_halo)
+    # where distances rule, a burst far behind in the Hubble flow is not inside, whatever the velocities say
+    flow = ~by_distance(haloes)[index] | (np.abs(z - z_halo) <= 3 * (sigma_kms + PECULIAR_KMS) / LIGHT_KMS)
+    return near & sharp & flow & (np.abs(z - z_listed) <= allowed)
+
+
+def _names(rows: str) -> set[str]:
+    """All names a halo answers to: the full row names, and the ids without the catalogue's label."""
+    full = str(rows).split(";")
+    return {*full, *(name.split(":", 1)[-1] for name in full)}
