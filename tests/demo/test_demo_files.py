@@ -201,6 +201,18 @@ def test_the_readers_take_every_row(tables):
     assert set(np.atleast_1d(groups.mass_def)) == {"200c"}
 
 
+def test_a_galaxy_that_names_its_group_adds_no_halo_of_its_own(planck):
+    from haloledger.catalogs import read_galaxies, read_groups
+    from haloledger.haloes.build import halo_list
+
+    galaxies = read_galaxies(str(FOLDER / "galaxies.ecsv"))
+    haloes = halo_list([galaxies], [read_groups(str(FOLDER / "groups.ecsv"))], planck)
+    alone = set(haloes.id[haloes.p_member < 1])
+    members = galaxies.row[galaxies.group != ""]
+    assert len(members) > 200
+    assert [name for name in members if name in alone] == []
+
+
 # ---------------------------------------------------------------- the eight roles
 
 
