@@ -1,7 +1,7 @@
 """Where a catalogue has looked: IVOA MOC maps and polygon outlines.
 
-A polygon's corners are joined by great circles and its inside is the smaller part of the sky. It is laid on a plane
-by Lambert's equal-area projection around its middle, which has no seam but the point opposite: no trouble at RA 0 or a pole.
+A polygon's corners are joined by great circles and its inside is the smaller part of the sky. It is laid on a plane by
+Lambert's equal-area projection around its middle, whose only seam is the point opposite: no trouble at RA 0 or a pole.
 """
 
 from __future__ import annotations

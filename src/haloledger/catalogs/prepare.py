@@ -105,10 +105,9 @@ def _lacks(raw: RawTable, kind: str, ours: str, spec: Field, found: dict[str, st
     return f"{raw.file}: no column '{ours}' for {kind} among {shown}.{hint}"
 
 
-_H_NAME = re.compile(
-    r"^(log_?)?_?m(ass|star|stellar|halo|vir|\d+[cm]?|$|_).*?(_h|/h|_h70|_h100|_h-?1|h-1|hinv|_over_h|perh|littleh)$",
-    re.I,
-)
+_MASS_WORD = r"(ass|_?star|_?stellar|_?halo|_?vir|_?(200|500|180)[cm]?)"
+_H_WORD = r"(_?/h|_?h-1|_?hinv|_h(_?-?1|70|100|inv)?|_over_h|_per_h|_littleh)"
+_H_NAME = re.compile(rf"^(log(10)?_?m{_MASS_WORD}?|(halo_|stellar_)?m{_MASS_WORD}){_H_WORD}$", re.I)
 
 
 def _refuse_h_names(raw: RawTable, kind: str, found: dict[str, str]) -> None:
@@ -116,8 +115,8 @@ def _refuse_h_names(raw: RawTable, kind: str, found: dict[str, str]) -> None:
         if native not in found.values() and _H_NAME.match(native):
             ours = "log_mass" if kind == "groups" else near(native, FIELDS[kind], 0.5) or "log_mstar"
             raise InputError(
-                f"{raw.file}: column '{native}' looks like a mass that carries h. Write log10 of the mass in Msun without"
-                f" h (Msun = (Msun/h) / h) in a column '{ours}', or describe the file with a card."
+                f"{raw.file}: column '{native}' looks like a mass that carries h. Write log10 of the mass in Msun,"
+                f" no h (Msun = (Msun/h) / h) in a column '{ours}', or describe the file with a card."
             )
 
 
@@ -168,7 +167,7 @@ def _bare_factor(file: str, native: str, unit: str, spec: Field, values: np.ndar
         )
     if spec.unit == "" and parsed.is_equivalent(u.km / u.s):
         raise InputError(
-            f"{file}: column '{native}' is in '{unit}', which does not convert to a redshift. Divide by 299792.458 km/s."
+            f"{file}: column '{native}' is in '{unit}', which does not convert to a redshift. Write v/c."
         )
     try:
         return factor(unit, spec, np.nan)

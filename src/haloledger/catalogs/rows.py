@@ -160,7 +160,8 @@ def redshift_error(table: Prepared, photometric: np.ndarray, index: np.ndarray) 
     """
     z, given = table.number("z"), table.number("z_err")
     r = table.card.redshift
-    default = np.full(len(table), r.error + r.error_per_one_plus_z * (1 + z))
+    z = np.where(np.isfinite(z), z, np.nan)
+    default = r.error + r.error_per_one_plus_z * (1 + z)
     if table.bare:
         default = np.where(photometric, 0.03 * (1 + z), 0.0)
     lacks = np.isnan(given) & np.isfinite(z)

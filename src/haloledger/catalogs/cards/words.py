@@ -13,7 +13,7 @@ def explain(card: Card) -> str:
     parts = [
         f"{card.name}: {card.title} ({card.kind})",
         f"Reference: {card.reference}",
-        f"This card is {card.sure}." if card.sure.startswith("checked") else f"This card was written {card.sure}.",
+        f"How sure: {card.sure}.",
         "",
         "Columns (ours <- theirs):",
         *[_column(card, ours, native) for ours, native in card.columns.items()],
