@@ -10,7 +10,14 @@ import numpy as np
 from haloledger.catalogs.canonical import Galaxies, Groups
 from haloledger.cosmos.background import Cosmos
 from haloledger.errors import InputError
-from haloledger.haloes.distances import point_redshift, z_floor
+from haloledger.haloes.distances import (
+    PECULIAR_KMS,
+    SPEED_OF_LIGHT_KMS,
+    by_distance,
+    distance_error_share,
+    point_redshift,
+    z_floor,
+)
 from haloledger.haloes.doubles import merge_galaxies, merge_groups, rows_in_order
 from haloledger.haloes.listing import galaxy_haloes, group_haloes
 from haloledger.haloes.masses import State, log_m200c
@@ -23,6 +30,7 @@ from haloledger.haloes.table import Haloes, change, join, rows
 
 MEDIAN_RELATION = "moster2013"  # for sizes in the search for doubles and members alone
 CEILING_SIGMA = 3.5
+CEILING_DISTANCE = 2.0
 
 __all__ = ["halo_list", "mass_ceiling", "point_mass", "z_floor"]
 
@@ -78,12 +86,14 @@ def point_mass(haloes: Haloes, cosmos: Cosmos, relation: str = MEDIAN_RELATION, 
 def mass_ceiling(haloes: Haloes, cosmos: Cosmos) -> np.ndarray:
     """log10 M200c that 99.9 per cent of draws stay below, whatever the relation, zero point and redshift; shape (n,).
 
-    Score 3.5 at the listed redshift, the stellar mass heavier by two zero points and by the distance at three redshift
-    errors.
+    Score 3.5 at the listed redshift; the stellar mass heavier by two zero points, and by three errors of the redshift
+    or two of the distance.
     """
     z = point_redshift(haloes, cosmos)
-    far = np.where(haloes.photometric, z + 3 * haloes.z_err, z)
-    shift = 2 * np.log10(cosmos.luminosity_distance_mpc(far) / cosmos.luminosity_distance_mpc(z)) + 2 * ZERO_POINT_DEX
+    far = z + 3 * np.hypot(haloes.z_err, PECULIAR_KMS / SPEED_OF_LIGHT_KMS)
+    flow = np.log10(cosmos.luminosity_distance_mpc(far) / cosmos.luminosity_distance_mpc(z))
+    measured = CEILING_DISTANCE * distance_error_share(haloes) / np.log(10)
+    shift = 2 * np.where(by_distance(haloes), measured, flow) + 2 * ZERO_POINT_DEX
     stellar = haloes.mass_kind == "stellar"
     ceiling = np.empty(len(haloes))
     ceiling[~stellar] = point_mass(rows(haloes, ~stellar), cosmos, score=CEILING_SIGMA)

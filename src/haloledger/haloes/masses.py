@@ -14,6 +14,7 @@ import numpy as np
 
 from haloledger.cosmos.background import Cosmos
 from haloledger.cosmos.mass_definitions import to_200c
+from haloledger.haloes.conversion import to_200c_fast
 from haloledger.haloes.nuisances import RelationOfDraw
 from haloledger.haloes.posterior import inverse
 from haloledger.haloes.relations import Relation, load_relation
@@ -59,17 +60,15 @@ class _Values:
 
 
 def _groups_of_rows(haloes: Haloes):
-    """Yield (rule, rows): rule is ("stellar",), ("m200c",), ("mass", definition, with prior) or ("proxy", relation)."""
+    """Yield (rule, rows); a rule is kind, definition or relation, and "prior" where a listed mass needs it."""
     prior = ~haloes.posterior & (haloes.value_err >= SHARP)
-    keys = [
-        (k, d, str(bool(p))) if k == "mass" else (k, r, "") if k == "proxy" else (k, "", "")
-        for k, d, r, p in zip(haloes.mass_kind, haloes.mass_def, haloes.relation, prior, strict=True)
-    ]
-    if not keys:
-        return
-    unique, which = np.unique(np.array(keys), axis=0, return_inverse=True)
+    kind = haloes.mass_kind.astype(str)
+    name = np.where(kind == "mass", haloes.mass_def, np.where(kind == "proxy", haloes.relation, "")).astype(str)
+    with_prior = np.where((kind == "mass") & prior, "prior", "")
+    keys = np.char.add(np.char.add(np.char.add(kind, "|"), np.char.add(name, "|")), with_prior)
+    unique, which = np.unique(keys, return_inverse=True)
     for i, rule in enumerate(unique.tolist()):
-        yield rule, np.flatnonzero(which.ravel() == i)
+        yield rule.split("|"), np.flatnonzero(which == i)
 
 
 def _stellar(values: _Values, state: State, posterior, relation: RelationOfDraw, cosmos: Cosmos) -> np.ndarray:
@@ -87,7 +86,7 @@ def _by_rule(rule: list[str], values: _Values, state: State, c_relation, cosmos:
     kind, name, prior = rule
     if kind == "mass":
         value = values.value - state.log_one_minus_b
-        if prior == "True":
+        if prior:
             return inverse(f"same-{name}", cosmos).mass(value, state.z, values.err, state.score)
         own, mass_def = value + values.err * state.score, name
     else:
@@ -96,7 +95,7 @@ def _by_rule(rule: list[str], values: _Values, state: State, c_relation, cosmos:
             return inverse(name, cosmos).mass(values.value, state.z, values.err, state.score)
         err = np.hypot(proxy.scatter(state.z), proxy.parameters["slope"] * values.err)
         own, mass_def = proxy.mean(values.value, state.z, cosmos) + err * state.score, proxy.mass_def
-    return to_200c(own, mass_def, state.z, c_relation, cosmos, state.log_c_offset)
+    return to_200c_fast(own, mass_def, state.z, c_relation, cosmos, state.log_c_offset)
 
 
 def naive_log_m200c(haloes: Haloes, state: State, relation: RelationOfDraw, c_relation, cosmos: Cosmos) -> np.ndarray:
@@ -123,9 +122,9 @@ def _naive(rule: list[str], value, state: State, relation: RelationOfDraw, cosmo
 
 
 def read_backwards(relation: Relation, y, z, cosmos: Cosmos) -> np.ndarray:
-    """log10 mass, in the relation's definition, whose mean proxy is y; bisection between 7 and 17 to 1e-9."""
+    """log10 mass, in the relation's definition, whose mean proxy is y; bisection between 7 and 16 to 1e-9."""
     low = np.full(np.broadcast_shapes(np.shape(y), np.shape(z)), 7.0)
-    high = low + 10.0
+    high = low + 9.0
     for _ in range(34):
         middle = 0.5 * (low + high)
         below = relation.mean(middle, z, cosmos) < y

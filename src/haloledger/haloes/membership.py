@@ -1,9 +1,9 @@
 """Which galaxies a listed group holds: those its catalogue puts there, and those inside its projected phase space.
 
-With a spectroscopic redshift a galaxy is inside or not. A photometric one within two errors is a member with the
-probability
+Where both redshifts are sharp, errors below the velocity dispersion, a galaxy is inside or not. Else, as with
+photometric redshifts (within two errors), it is a member with the probability
 
-    p / (1 - p) = delta x 2 sqrt(r200c^2 - R^2) H(z) / c x N(z_obs | z_group, err)
+    p / (1 - p) = delta x 2 sqrt(r200c^2 - R^2) H(z) / c x N(z_obs | z_group, err and dispersion)
 
 that is, galaxies follow matter: the density inside a halo is delta = 200 rho_crit / rho_mean times the mean, along a
 chord of the sphere, against the mean density along the whole line within the redshift's error.
@@ -15,7 +15,7 @@ import numpy as np
 
 from haloledger.cosmos.background import Cosmos
 from haloledger.haloes.distances import SPEED_OF_LIGHT_KMS
-from haloledger.haloes.phase_space import Extent, Inside, inside
+from haloledger.haloes.phase_space import Extent, inside
 from haloledger.haloes.table import Haloes
 
 HEAVIER_DEX = 0.7  # a galaxy heavier than a group by more is not its member, whatever the sky looks like
@@ -26,24 +26,24 @@ def member_probability(galaxies: Haloes, galaxy_size: Extent, groups: Haloes, si
 
     group_rows  every "label:id" of the listed groups, doubles and parts included
     """
-    p = np.zeros(len(galaxies))
     found = inside(groups, size, galaxies, galaxy_size)
     lighter = galaxy_size.log_m200c[found.j] <= size.log_m200c[found.i] + HEAVIER_DEX
+    i, j = found.i[lighter], found.j[lighter]
+    scale = SPEED_OF_LIGHT_KMS / (1 + size.z[i])
+    err_kms = np.hypot(galaxies.z_err[j], groups.z_err[i]) * scale
+    sharp = (err_kms < size.sigma_v_kms[i]) & ~galaxies.photometric[j]
     odds = np.zeros(len(galaxies))
-    np.add.at(odds, found.j[lighter], _odds(found, galaxies, groups, size, cosmos)[lighter])
-    photometric = galaxies.photometric
-    p[photometric] = (odds / (1 + odds))[photometric]
-    p[~photometric & (odds > 0)] = 1.0
+    apart_kms = (galaxies.z[j] - groups.z[i]) * scale
+    np.add.at(odds, j, _odds(apart_kms, np.hypot(err_kms, size.sigma_v_kms[i]), found.radius[lighter], size, i, cosmos))
+    p = odds / (1 + odds)
+    p[j[sharp]] = 1.0
     p[np.isin(galaxies.listed_group.astype(str), list(group_rows))] = 1.0
     return p
 
 
-def _odds(found: Inside, galaxies: Haloes, groups: Haloes, size: Extent, cosmos: Cosmos) -> np.ndarray:
-    i, j = found.i, found.j
+def _odds(apart_kms, err_kms, radius, size: Extent, i, cosmos: Cosmos) -> np.ndarray:
     z = size.z[i]
-    hubble_mpc = SPEED_OF_LIGHT_KMS / (100 * cosmos.h)
-    chord_mpc = 2e-3 * size.r200c_kpc[i] * np.sqrt(np.maximum(1 - found.radius**2, 0.0)) * (1 + z)
-    delta = 200 / cosmos.omega_m_z(z)
-    err = np.maximum(np.hypot(galaxies.z_err[j], groups.z_err[i]), 1e-4)
-    density = np.exp(-0.5 * ((galaxies.z[j] - groups.z[i]) / err) ** 2) / (np.sqrt(2 * np.pi) * err)
-    return np.maximum(delta * chord_mpc * cosmos.e_of_z(z) / hubble_mpc * density, 1e-9)
+    chord_kpc = 2 * size.r200c_kpc[i] * np.sqrt(np.maximum(1 - radius**2, 0.0))
+    hubble_kms = 0.1 * cosmos.h * cosmos.e_of_z(z) * chord_kpc  # speed across the chord in the Hubble flow
+    per_kms = np.exp(-0.5 * (apart_kms / err_kms) ** 2) / (np.sqrt(2 * np.pi) * err_kms)
+    return 200 / cosmos.omega_m_z(z) * hubble_kms * per_kms

@@ -15,7 +15,7 @@ from haloledger.haloes.distances import (
 )
 from haloledger.haloes.neighbours import Places, close_pairs, separation_rad
 from haloledger.haloes.relations import load_relation
-from haloledger.haloes.table import Haloes, rows
+from haloledger.haloes.table import Haloes
 
 N_SIGMA = 3.0  # of the velocity dispersion and the redshift errors, in quadrature
 N_SIGMA_DISTANCE = 2.0
@@ -54,7 +54,7 @@ def extent(haloes: Haloes, log_m200c: np.ndarray, cosmos: Cosmos) -> Extent:
 def inside(haloes: Haloes, size: Extent, others: Haloes, other_extent: Extent) -> Inside:
     """All pairs of a halo and a row of `others` inside it; a centre error widens the circle by one sigma."""
     reach_kpc = size.r200c_kpc + haloes.centre_err_kpc
-    window = 3 * N_SIGMA * size.sigma_v_kms / SPEED_OF_LIGHT_KMS
+    window = N_SIGMA * size.sigma_v_kms / SPEED_OF_LIGHT_KMS
     i, j = close_pairs(_places(haloes, window), _places(others, np.zeros(len(others))), reach_kpc / size.kpc_per_rad)
     radians = separation_rad(haloes.ra_deg[i], haloes.dec_deg[i], others.ra_deg[j], others.dec_deg[j])
     radius = radians * size.kpc_per_rad[i] / reach_kpc[i]
@@ -86,11 +86,3 @@ def _distances_agree(haloes: Haloes, size: Extent, i, others: Haloes, other_exte
     err = np.hypot(d1 * distance_error_share(haloes)[i], d2 * distance_error_share(others)[j])
     agree = np.abs(d1 - d2) <= N_SIGMA_DISTANCE * err + size.r200c_kpc[i] / 1e3
     return ~both | agree
-
-
-def subset(size: Extent, index) -> Extent:
-    """The rows `index`."""
-    return Extent(**{k: v[index] for k, v in vars(size).items()})
-
-
-__all__ = ["Extent", "Inside", "extent", "inside", "rows", "subset"]

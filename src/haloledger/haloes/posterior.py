@@ -9,7 +9,6 @@ cumulative probability: a draw with normal u is a look-up. Quantiles run smoothl
 from __future__ import annotations
 
 from dataclasses import dataclass
-from itertools import product
 
 import numpy as np
 from scipy.special import ndtr
@@ -18,6 +17,7 @@ from haloledger.cosmos.background import Cosmos
 from haloledger.cosmos.concentration import concentration
 from haloledger.cosmos.mass_definitions import from_200c
 from haloledger.cosmos.mass_function import mass_function
+from haloledger.haloes.interpolate import Place, multilinear, place, uniform_place
 from haloledger.haloes.relations import Relation, load_relation
 
 LOG_M = np.arange(8.5, 16.005, 0.02)
@@ -31,7 +31,6 @@ Y_NODES = {
     "log_lx_1e44_erg_s": np.arange(-6.0, 2.6, 0.1),
     "log_mass": np.arange(8.5, 16.01, 0.1),
 }
-Place = tuple[np.ndarray, np.ndarray]  # lower node, share of the upper node
 
 
 @dataclass(frozen=True, eq=False)
@@ -46,17 +45,17 @@ class Inverse:
 
     def mass(self, y, z, err, u) -> np.ndarray:
         """log10 M200c at normal score u, for y measured with error `err` [dex] at z; shapes broadcast."""
-        return _multilinear(self.log_m200c, [*self._places(y, z, err), _uniform_place(U_NODES, u)])
+        return multilinear(self.log_m200c, [*self._places(y, z, err), uniform_place(U_NODES, u)])
 
     def ln_count(self, y, z, err) -> np.ndarray:
         """ln of the number of haloes [Mpc-3 dex-1] that show y, measured with error `err`; shapes broadcast."""
-        return _multilinear(self.ln_number, self._places(y, z, err))
+        return multilinear(self.ln_number, self._places(y, z, err))
 
     def _places(self, y, z, err) -> list[Place]:
         sigma = np.hypot(
             self.relation.scatter(z) if self.relation.scatter_dex[1] else self.relation.scatter_dex[0], err
         )
-        return [_place(Z_NODES, z), _place(self.sigma, sigma), _place(self.y, y)]
+        return [place(Z_NODES, z), place(self.sigma, sigma), place(self.y, y)]
 
 
 _TABLES: dict[tuple[str, str], Inverse] = {}
@@ -96,29 +95,3 @@ def mean_of_200c(relation: Relation, log_m200c, z, cosmos: Cosmos) -> np.ndarray
     """What the relation gives for a halo of M200c, whatever its own mass definition."""
     c200c = concentration(MASS_RELATION, log_m200c, z, cosmos)
     return relation.mean(from_200c(log_m200c, relation.mass_def, z, c200c, cosmos), z, cosmos)
-
-
-def _place(nodes: np.ndarray, x) -> Place:
-    x = np.asarray(x, dtype=float)
-    low = np.clip(np.searchsorted(nodes, x, side="right") - 1, 0, nodes.size - 2)
-    return low, np.clip((x - nodes[low]) / (nodes[low + 1] - nodes[low]), 0.0, 1.0)
-
-
-def _uniform_place(nodes: np.ndarray, x) -> Place:
-    at = np.clip((np.asarray(x, dtype=float) - nodes[0]) / (nodes[1] - nodes[0]), 0.0, nodes.size - 1.0)
-    low = np.minimum(at.astype(np.intp), nodes.size - 2)
-    return low, at - low
-
-
-def _multilinear(table: np.ndarray, places: list[Place]) -> np.ndarray:
-    """Linear in every axis, clamped at the ends; element by element, so that grouping changes no bit."""
-    flat = table.ravel()
-    strides = np.cumprod((1, *table.shape[:0:-1]))[::-1]
-    base = sum(low * stride for (low, _), stride in zip(places, strides, strict=True))
-    result = np.zeros(np.shape(base))
-    for corner in product((0, 1), repeat=len(places)):
-        weight: np.ndarray | float = 1.0
-        for up, (_, share) in zip(corner, places, strict=True):
-            weight = weight * (share if up else 1.0 - share)
-        result += weight * flat.take(base + sum(up * stride for up, stride in zip(corner, strides, strict=True)))
-    return result

@@ -87,11 +87,15 @@ def _quantiles(haloes: Haloes, listed, err, relation: RelationOfDraw, zero, cosm
     counted = ((haloes.mass_kind == "stellar") & ~haloes.posterior)[:, None, None]
     table = np.empty((len(haloes), len(relation.names), ZERO_POINTS.size, U_NODES.size))
     for i, name in enumerate(relation.names):
-        ln_count = inverse(name, cosmos).ln_count(
-            y[:, None] - ZERO_POINTS[:, None], grid[:, None], haloes.value_err[:, None, None]
-        )
+        true = y[:, None] - (_centre(zero) + ZERO_POINTS)[:, None]
+        ln_count = inverse(name, cosmos).ln_count(true, grid[:, None], haloes.value_err[:, None, None])
         table[:, i] = _invert(ln_p[:, None] + np.where(counted, ln_count, 0.0), grid[:, None])
     return table
+
+
+def _centre(zero: np.ndarray) -> float:
+    # a held zero point, however large, stands on a node
+    return float(zero[0]) if np.ptp(zero) == 0 else 0.0
 
 
 def _invert(ln_p: np.ndarray, grid: np.ndarray) -> np.ndarray:
@@ -113,7 +117,7 @@ def _invert(ln_p: np.ndarray, grid: np.ndarray) -> np.ndarray:
 
 def _look_up(table: np.ndarray, score: np.ndarray, relation: RelationOfDraw, zero: np.ndarray) -> np.ndarray:
     """Bilinear in zero point and normal score; (n, n_draws)."""
-    at = np.clip((zero - ZERO_POINTS[0]) / (ZERO_POINTS[1] - ZERO_POINTS[0]), 0, ZERO_POINTS.size - 1)
+    at = np.clip((zero - _centre(zero) - ZERO_POINTS[0]) / (ZERO_POINTS[1] - ZERO_POINTS[0]), 0, ZERO_POINTS.size - 1)
     i = np.minimum(at.astype(int), ZERO_POINTS.size - 2)
     up = np.clip((score - U_NODES[0]) / (U_NODES[1] - U_NODES[0]), 0, U_NODES.size - 1)
     j = np.minimum(up.astype(int), U_NODES.size - 2)
