@@ -5,15 +5,12 @@ from __future__ import annotations
 from dataclasses import dataclass, field
 
 import numpy as np
-from astropy import units as u
-from astropy.table import MaskedColumn, QTable
-from astropy.utils.masked import Masked
+from astropy.table import QTable
 
 from haloledger.catalogs.canonical import Bursts, Refusal
-from haloledger.report.columns import entry_columns, meaning, sightline_columns
+from haloledger.ledger.ledgers import entries_table, sightlines_table
 
 MODELS = ("blended", "strong-feedback")
-TEXT = {"burst", "model", "halo", "kind", "source_rows", "z_kind", "verdict", "reasons", "note"}
 
 
 @dataclass
@@ -34,22 +31,6 @@ class FakeLedgers:
     notes: list = field(default_factory=list)
     draws: object = None
     entry_draws: object = None
-
-
-def table(rows: list[dict], columns: list[str], kind: str) -> QTable:
-    """Rows to a QTable; a cell that is missing from its row is masked."""
-    out = QTable()
-    for name in columns:
-        mask = [name not in row for row in rows]
-        if name in TEXT:
-            out[name] = MaskedColumn([row.get(name, "") for row in rows], mask=mask, dtype=str)
-        elif name == "n_haloes":
-            out[name] = MaskedColumn([row.get(name, 0) for row in rows], mask=mask, dtype=int)
-        else:
-            values = np.array([row.get(name, np.nan) for row in rows], float)
-            unit = meaning(kind, name)[0]
-            out[name] = Masked(values, mask=mask) * u.Unit(unit) if unit else MaskedColumn(values, mask=mask)
-    return out
 
 
 def spread(name: str, mean: float, low: float, high: float) -> dict:
@@ -131,13 +112,16 @@ def ledgers(names=("FRB20990101A", "FRB20990202B"), models=MODELS, major=0.3, mi
         rows += sightlines
         lines += entries
     return FakeLedgers(
-        sightlines=table(rows, sightline_columns(), "sightlines"),
-        entries=table(lines, entry_columns(), "entries"),
+        sightlines=sightlines_table(rows),
+        entries=entries_table(lines),
         bursts=bursts(names, ra, dec, z, dm, major, minor),
         refused=[Refusal("galaxies.csv", 17, "g17", "dec", "97.2", "Dec in degrees between -90 and 90")],
-        run={"seed": 1, "draws": 1000, "inputs": [{"file": "bursts.csv", "sha256": "0" * 64}], "models": {m: "name = 'x'\n" for m in models}},
+        run={
+            "seed": 1,
+            "draws": 1000,
+            "inputs": [{"file": "bursts.csv", "sha256": "0" * 64}],
+            "models": dict.fromkeys(models, "name = 'x'\n"),
+        },
         models=[Model(m) for m in models],
         notes=["dm_host_obs: default of 0.3 dex used for 2 bursts"],
     )
-
-

@@ -61,7 +61,7 @@ def test_fits_comment_keyword_holds_the_meaning(ledgers, tmp_path):
     write(ledgers, tmp_path / "out", "fits")
     header = fits.getheader(tmp_path / "out" / "sightlines.fits", 1)
     assert header["TTYPE6"] == "dm"
-    assert header["TCOMM6"] == "observed DM"
+    assert header["TCOMM6"] == "observed dispersion measure"
     assert header["TUNIT6"] == "pc cm-3"
 
 
@@ -126,7 +126,9 @@ def test_a_run_file_cannot_name_files_outside_its_folder(ledgers, tmp_path):
     write(ledgers, out)
     victim = tmp_path / "victim.txt"
     victim.write_text("kept")
-    text = (out / "run.toml").read_text() + f'"../victim.txt" = "0"\n"{victim}" = "0"\n"figures/../../victim.txt" = "0"\n'
+    text = (
+        out / "run.toml"
+    ).read_text() + f'"../victim.txt" = "0"\n"{victim}" = "0"\n"figures/../../victim.txt" = "0"\n'
     (out / "run.toml").write_text(text)
     write(ledgers, out)
     assert victim.read_text() == "kept"

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+from dataclasses import astuple
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -9,12 +11,23 @@ import numpy as np
 from astropy.table import Column, MaskedColumn, Table
 
 from haloledger.errors import InputError
-from haloledger.report.columns import meaning
+from haloledger.ledger.columns import SIGHTLINES, STATISTICS
 
 if TYPE_CHECKING:
     import pandas as pd
 
+    from haloledger.catalogs.canonical import Refusal
+
 SUFFIX = {"ecsv": ".ecsv", "csv": ".csv", "fits": ".fits", "votable": ".vot", "parquet": ".parquet"}
+
+_REFUSED = {
+    "file": "file or table the row stands in",
+    "row": "row, counted from 1; 0 for the whole file",
+    "name": "burst or id",
+    "column": "column that was at fault",
+    "found": "what was found",
+    "advice": "what to write instead",
+}
 
 
 def check_format(table_format: str) -> str:
@@ -24,18 +37,24 @@ def check_format(table_format: str) -> str:
     return table_format
 
 
-def described(table: Table, kind: str) -> Table:
-    """A plain copy of `table` in which every column carries its unit and meaning; `kind` names the set of columns."""
+def described(table: Table, table_format: str) -> Table:
+    """A plain copy of `table` that `table_format` can hold; units and meanings are those of its columns."""
     plain = Table(table, copy=True)
     for name in plain.colnames:
-        unit, text = meaning(kind, name)
-        column = plain[name]
-        if column.dtype.kind == "O":
-            column = plain[name] = _as_text(column)
-        if unit and column.unit is None:
-            column.unit = unit
-        column.description = column.description or text or None
+        if plain[name].dtype.kind == "O":
+            plain[name] = _as_text(plain[name])
+        unit = plain[name].unit
+        if table_format in ("fits", "votable") and unit is not None and "dex" in str(unit):
+            plain[name].unit = None  # neither standard knows dex; the meaning says log10 Msun
     return plain
+
+
+def refused_table(refused: Sequence[Refusal]) -> Table:
+    """Refused rows as a table."""
+    table = Table(rows=[astuple(refusal) for refusal in refused], names=list(_REFUSED))
+    for name, text in _REFUSED.items():
+        table[name].description = text
+    return table
 
 
 def write_table(table: Table, path: Path, table_format: str) -> None:
@@ -65,12 +84,15 @@ def write_draws(frame: pd.DataFrame, path: Path) -> None:
     import pyarrow as pa
     from pyarrow import parquet
 
+    # a draw of a term means what its mean means, without the statistic
+    known_terms = {c.name.removesuffix("_mean"): c for c in SIGHTLINES if not c.name.endswith(STATISTICS[1:])}
     arrow = pa.Table.from_pandas(frame)
     schema = arrow.schema
     for i, column in enumerate(schema):
-        unit, text = meaning("sightlines", column.name)
-        if text:
-            known = {**(column.metadata or {}), "unit": unit, "description": text}
+        term = known_terms.get(column.name)
+        if term:
+            text = term.meaning.removesuffix("; mean of the draws")
+            known = {**(column.metadata or {}), "unit": term.unit.replace("text", ""), "description": text}
             schema = schema.set(i, column.with_metadata(known))
     parquet.write_table(arrow.cast(schema), path)
 

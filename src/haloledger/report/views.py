@@ -12,7 +12,7 @@ import numpy as np
 from astropy.table import Table
 
 from haloledger.errors import InputError
-from haloledger.report.columns import TERMS
+from haloledger.ledger.budget import TERMS
 
 SHARED = "shared"  # the row of `entries` that is no halo: what all haloes of a draw have in common
 

@@ -12,16 +12,13 @@ import shutil
 import tempfile
 import tomllib
 from collections.abc import Callable
-from dataclasses import astuple
 from pathlib import Path
 from typing import Any
 
 import numpy as np
-from astropy.table import Table
 
 from haloledger.errors import InputError
 from haloledger.report import tables
-from haloledger.report.columns import REFUSED
 from haloledger.report.names import file_names
 
 RUN_FILE = "run.toml"
@@ -89,13 +86,10 @@ def _ours(name: str) -> bool:
 
 
 def _write_tables(ledgers: Any, work: Path, table_format: str) -> None:
-    every = {
-        "sightlines": tables.described(ledgers.sightlines, "sightlines"),
-        "entries": tables.described(ledgers.entries, "entries"),
-    }
+    every = {"sightlines": ledgers.sightlines, "entries": ledgers.entries}
     if ledgers.refused:
-        rows = [astuple(refusal) for refusal in ledgers.refused]
-        every["refused"] = tables.described(Table(rows=rows, names=list(REFUSED)), "refused")
+        every["refused"] = tables.refused_table(ledgers.refused)
+    every = {kind: tables.described(table, table_format) for kind, table in every.items()}
     for kind, table in every.items():
         tables.write_table(table, work / f"{kind}{tables.SUFFIX[table_format]}", table_format)
     if table_format == "csv":

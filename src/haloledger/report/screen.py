@@ -1,0 +1,243 @@
+"""The ledgers on a terminal or in a pipe: a page a burst, or a line a burst where there are many.
+
+Names from catalogues enter as plain text, never as markup, so what a halo is called cannot change the screen.
+"""
+
+from __future__ import annotations
+
+import os
+import shutil
+import sys
+from dataclasses import dataclass
+from typing import Any, TextIO
+
+import numpy as np
+from rich import box
+from rich.console import Console, RenderableType
+from rich.padding import Padding
+from rich.rule import Rule
+from rich.table import Table
+from rich.text import Text
+
+from haloledger.report import text
+from haloledger.report.names import plain
+from haloledger.report.views import BUDGET, SightlineView, by_burst, localisation, views
+
+MANY = 12  # more bursts than this get a line each
+TOP = 8  # entries shown a burst
+SHORTEST_NAME = 16  # a column of numbers goes before names get shorter than this
+LONGEST_HALO = 28  # in the table of many bursts
+WIDTH_IN_A_PIPE = 120
+
+_LINES = box.Box("    \n    \n ── \n    \n ── \n    \n    \n    \n")  # a line under the head and above a total
+
+
+def console(file: TextIO | None = None, width: int | None = None) -> Console:
+    """Console for results: colour only on a terminal and without NO_COLOR, 72 to 140 wide, names never wrapped away."""
+    file = file or sys.stdout
+    on_terminal = hasattr(file, "isatty") and file.isatty()
+    if width is None:
+        # COLUMNS, then the terminal's own width; a pipe has none and gets enough for every column
+        width = shutil.get_terminal_size((WIDTH_IN_A_PIPE, 24)).columns
+    colour = on_terminal and not os.environ.get("NO_COLOR")
+    return Console(
+        file=file,
+        width=max(72, min(width, 140)),
+        no_color=not colour,
+        color_system="auto" if colour else None,
+        highlight=False,
+        markup=False,
+        emoji=False,
+        legacy_windows=False,
+    )
+
+
+def show(ledgers: Any, to: Console, folder: str | None = None) -> None:
+    """Print the ledgers; `folder` is where the files are, if any were written."""
+    bursts = by_burst(views(ledgers))
+    many = len(bursts) > MANY
+    pages = [[_many(bursts, to.width)]] if many else [_page(ledgers, m, to.width) for m in bursts.values()]
+    for parts in [*pages, _last_words(ledgers, folder, many)]:
+        _print(to, [*parts, Text()])
+
+
+def _print(to: Console, parts: list[RenderableType]) -> None:
+    """Print the parts; in a pipe without the blanks that fill a terminal's lines."""
+    if to.is_terminal:
+        for part in parts:
+            to.print(part)
+        return
+    with to.capture() as captured:
+        for part in parts:
+            to.print(part)
+    to.file.write("\n".join(line.rstrip() for line in captured.get().split("\n")))
+
+
+def _words(value: object, style: str = "") -> Text:
+    return Text(plain(value), style=style, no_wrap=True, overflow="ellipsis")
+
+
+def _sentence(value: object, style: str = "") -> Text:
+    return Text(plain(value), style=style)
+
+
+@dataclass(frozen=True)
+class Cells:
+    """A column of numbers; where the screen is narrow, columns with the highest `spare` go first, 0 never goes."""
+
+    heading: str
+    cells: list[str]
+    spare: int = 0
+
+    @property
+    def width(self) -> int:
+        return max(map(len, [self.heading, *self.cells])) + 2
+
+
+def _grid(first: str, names: list[str], columns: list[Cells], width: int, total: bool = False, title: str = "") -> Table:
+    """Rows of a name and numbers. Numbers are never cut, names may be; the last row is a `total` under a line."""
+    kept = list(columns)
+    while sum(c.width for c in kept) + SHORTEST_NAME + 2 > width and any(c.spare for c in kept):
+        kept.remove(max(kept, key=lambda c: c.spare))
+    grid = Table(box=_LINES, show_edge=False, pad_edge=False, padding=(0, 1, 0, 0), header_style="bold")
+    room = max(width - sum(c.width for c in kept) - 2, 8)
+    grid.add_column(first, no_wrap=True, overflow="ellipsis", width=min(room, max(map(len, [first, *names]))))
+    for column in kept:
+        grid.add_column(column.heading, justify="right", no_wrap=True, min_width=column.width - 2)
+    for i, name in enumerate(names):
+        last = total and i == len(names) - 1
+        if last:
+            grid.add_section()
+        grid.add_row(_words(name), *(_words(c.cells[i]) for c in kept), style="bold" if last else "")
+    if title:
+        grid.title, grid.title_justify, grid.title_style = _words(title), "left", "italic"
+    return grid
+
+
+def _indent(part: RenderableType) -> Padding:
+    return Padding(part, (0, 0, 0, 2))
+
+
+def _page(ledgers: Any, models: list[SightlineView], width: int) -> list[RenderableType]:
+    """Everything about one burst: head, entries, models, budget, notes. The first model is shown in full."""
+    view = models[0]
+    parts: list[RenderableType] = [
+        Rule(_words(view.burst, "bold"), align="left", characters="─"),
+        _indent(_words(text.source(view))),
+        _indent(_words(text.place(view, localisation(ledgers, view.burst)))),
+        Text(),
+        _indent(_entries(view, width - 2)),
+    ]
+    if len(models) > 1:
+        parts += [Text(), _indent(_models(models, width - 2))]
+    parts += [Text(), _indent(_budget(view, width - 2)), Text(), _indent(_words(text.judged(view), "dim"))]
+    notes = dict.fromkeys(note for m in models for note in (m.note,) if note)
+    return parts + [_indent(_sentence(f"note: {note}")) for note in notes]
+
+
+def _entries(view: SightlineView, width: int) -> RenderableType:
+    lines = text.with_dm(view)
+    if not lines:
+        return _sentence(f"model {view.model}: no listed halo adds DM here ({view.n_haloes} in the ledger)")
+    top, rest = lines[:TOP], lines[TOP:]
+    total = view.terms["dm_foreground"]
+    names = [e.halo for e in top] + [f"{len(rest)} more"] * bool(rest) + ["sum of listed haloes"]
+    blank = [""] * (len(names) - len(top))
+    more_dm = [text.dm(sum(e.dm.mean for e in rest))] * bool(rest)
+    more_share = [text.percent(sum(e.share for e in rest))] * bool(rest)
+    columns = [
+        Cells("kind", [e.kind for e in top] + blank, spare=3),
+        Cells("z", [text.redshift(e.z, e.z_kind) for e in top] + blank),
+        Cells("log M200c", [text.mass(e.log_m200c) for e in top] + blank, spare=1),
+        Cells("b [kpc]", [text.length(e.impact_kpc.p50) for e in top] + blank, spare=4),
+        Cells("b/r200c", [text.number(e.impact_r200c, 2) for e in top] + blank),
+        Cells("in front", [text.percent(e.p_front) for e in top] + blank, spare=2),
+        Cells("DM mean", [text.dm(e.dm.mean) for e in top] + more_dm + [text.dm(total.mean)]),
+        Cells("16 to 84 %", [text.dm_range(e.dm) for e in top] + [""] * bool(rest) + [text.dm_range(total)]),
+        Cells("share", [text.percent(e.share) for e in top] + more_share + [""]),
+    ]
+    if all(e.p_front >= 0.995 for e in top):
+        columns.pop(5)
+    title = f"model {view.model}: {text.number(view.n_crossed)} haloes crossed on average; DM in pc cm-3"
+    return _grid("halo", names, columns, width, total=True, title=title)
+
+
+def _models(models: list[SightlineView], width: int) -> Table:
+    totals = [m.terms["dm_foreground"] for m in models]
+    columns = [
+        Cells("crossed", [text.number(m.n_crossed) for m in models], spare=2),
+        Cells("DM mean", [text.dm(t.mean) for t in totals]),
+        Cells("16 to 84 %", [text.dm_range(t) for t in totals]),
+        Cells("median", [text.dm(t.p50) for t in totals], spare=1),
+        Cells("left over", [text.dm(m.terms["dm_after_all"].p50) for m in models]),
+    ]
+    return _grid("sum of listed haloes, by model", [m.model for m in models], columns, width)
+
+
+def _budget(view: SightlineView, width: int) -> Table:
+    """The terms as they add up: means do, medians do not."""
+    spreads = [view.terms[term] for term in BUDGET]
+    left = view.terms["dm_after_all"]
+    last = [text.dm(left.mean), text.dm_range(left), text.dm(left.p50)]
+    columns = [
+        Cells("DM mean", [text.dm(s.mean) for s in spreads] + [text.dm(view.dm), last[0]]),
+        Cells("16 to 84 %", [text.dm_range(s) for s in spreads] + ["", last[1]]),
+        Cells("median", [text.dm(s.p50) for s in spreads] + ["", last[2]]),
+    ]
+    unknown = "" if left.known else " (needs a redshift)"
+    return _grid("budget", [*BUDGET.values(), "observed DM", f"left over{unknown}"], columns, width, total=True)
+
+
+def _many(bursts: dict[str, list[SightlineView]], width: int) -> Table:
+    """A line a burst."""
+    first = [models[0] for models in bursts.values()]
+    totals = [view.terms["dm_foreground"] for view in first]
+    tops = [text.with_dm(view)[:1] for view in first]
+    columns = [
+        Cells("z", [text.number(view.z, 4) for view in first]),
+        Cells("DM", [text.dm(view.dm) for view in first], spare=4),
+        Cells("crossed", [text.number(view.n_crossed) for view in first], spare=5),
+        Cells("DM haloes", [text.dm(t.mean) for t in totals]),
+        Cells("16 to 84 %", [text.dm_range(t) for t in totals]),
+        Cells("all models", [_span(models) for models in bursts.values()], spare=2),
+        Cells("left over", [text.dm(view.terms["dm_after_all"].p50) for view in first], spare=3),
+        Cells("largest halo", _left_aligned([_shortened(top[0].halo) if top else text.NONE for top in tops]), spare=1),
+        Cells("share", [text.percent(top[0].share) if top else text.NONE for top in tops], spare=1),
+    ]
+    if all(len(models) == 1 for models in bursts.values()):
+        columns.pop(5)
+    title = f"model {first[0].model}; DM in pc cm-3, means of the draws; left over: median"
+    return _grid("burst", [view.burst for view in first], columns, width, title=title)
+
+
+def _left_aligned(cells: list[str]) -> list[str]:
+    longest = max(map(len, cells))
+    return [cell.ljust(longest) for cell in cells]
+
+
+def _shortened(name: str) -> str:
+    return name if len(name) <= LONGEST_HALO else name[: LONGEST_HALO - 1] + "…"
+
+
+def _span(models: list[SightlineView]) -> str:
+    means = [m.terms["dm_foreground"].mean for m in models]
+    return f"{text.dm(float(np.min(means)))} to {text.dm(float(np.max(means)))}"
+
+
+def _last_words(ledgers: Any, folder: str | None, many: bool) -> list[RenderableType]:
+    parts: list[RenderableType] = [_sentence(f"note: {note}") for note in ledgers.notes]
+    if ledgers.refused:
+        parts.append(_sentence(f"{_counted(len(ledgers.refused), 'row')} refused:"))
+        for r in ledgers.refused[:5]:
+            name = f" ({r.name})" if r.name else ""
+            parts.append(_indent(_sentence(f"{r.file} row {r.row}{name}: {r.column} is {r.found}. {r.advice}")))
+        if len(ledgers.refused) > 5:
+            parts.append(_indent(_sentence(f"and {len(ledgers.refused) - 5} more, see the table refused")))
+    if folder:
+        what = "every halo of every burst is in the table entries there" if many else "all entries are there"
+        parts.append(_sentence(f"Files are in {folder}: {what}."))
+    return [*parts, _sentence(text.CAUTION, "italic dim")]
+
+
+def _counted(n: int, what: str) -> str:
+    return f"{n} {what}{'' if n == 1 else 's'}"
