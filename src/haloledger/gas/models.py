@@ -54,14 +54,16 @@ class Model:
             found.add("mass")
         return tuple(a for a in AXES if a in found)
 
+    def log_weight(self, k: int, log_m200c) -> np.ndarray:
+        """ln of the weight of component k at this mass: logistic in log mass at each handover, one after the other."""
+        log_m = np.asarray(log_m200c, dtype=float)
+        steps = [(log_m - m) / w for m, w in zip(self.handover_log_m200c, self.handover_width_dex, strict=True)]
+        passed = sum((-np.logaddexp(0.0, -s) for s in steps[:k]), np.zeros(log_m.shape))
+        return passed - np.logaddexp(0.0, steps[k]) if k < len(steps) else passed
+
     def weights(self, log_m200c) -> list[np.ndarray]:
         """Weight of each component at this mass; they add up to 1 and hand over along the list as mass rises."""
-        rest, weights = np.ones(np.shape(log_m200c)), []
-        for middle, width in zip(self.handover_log_m200c, self.handover_width_dex, strict=True):
-            later = 1 / (1 + np.exp(-(np.asarray(log_m200c) - middle) / width))
-            weights.append(rest * (1 - later))
-            rest = rest * later
-        return [*weights, rest]
+        return [np.exp(self.log_weight(k, log_m200c)) for k in range(len(self.components))]
 
     def relative_density(self, x, log_m200c, z, c200c, cosmos: Cosmos) -> np.ndarray:
         """rho_gas 4 pi r200c^3 / (f_b M200c) at x = r / r200c, boundary not applied."""

@@ -1,18 +1,19 @@
-"""Columns of halo gas: one table per model, made by quadrature, and one kernel that looks all of them up.
+"""Columns of halo gas: tables per model, made by quadrature, looked up by the one kernel.
 
-The column through a sphere of radius B = boundary r200c at impact parameter b is, with u = b/B,
+The column through a sphere of radius B = boundary (in r200c) at impact parameter b is, with u = b/B,
 
-    DM_rest = unit f_b M200c / r200c^2 sqrt(1 - u^2) T,    T = (1/4 pi) 2 B  integral_0^1 density(sqrt(b^2 + (B^2 - b^2) s^2)) ds,
+    DM_rest = unit f_b M200c / r200c^2 sqrt(1 - u^2)  sum of A T over the model's components
+    T = (2 B / 4 pi)  integral of density(sqrt(b^2 + (B^2 - b^2) s^2)) ds over s from 0 to 1
 
-density being the model's relative density. The square root is the edge of the sphere; T is smooth and above 0 from the
-centre to the boundary, so ln T is tabulated and interpolated linearly over sqrt(u), log M, ln(1+z) and ln c, in the
-dimensions the model depends on. Power laws in mass, redshift or concentration are thereby exact.
-
-Every step of the kernel acts on one element alone, on contiguous buffers: results do not hang on how rows are grouped.
+density being the component's shape, A its amplitude (normalisation, kept fraction, weight in a mixture) and `unit` that
+of DM. The square root is the edge of the sphere; T is smooth and above 0 from the centre to the boundary. So ln T and
+ln A are tabulated and interpolated linearly over sqrt(u), log M, ln(1+z) and ln c, in those that they depend on, and
+power laws in mass, redshift or concentration are exact. Each axis gets as many points as its curvature asks for.
 """
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 from functools import lru_cache
 
@@ -20,161 +21,184 @@ import numpy as np
 
 from haloledger.cosmos import electrons
 from haloledger.cosmos.background import Cosmos
+from haloledger.gas.kernel import CHUNK, Axis, Table, columns
 from haloledger.gas.models import Model
 from haloledger.gas.quadrature import along_line, crowded_rule
 from haloledger.gas.shapes import AXES
 
-CHUNK = 8192
-N_U = 257
-LOG_M = (9.0, 16.0, 141)  # from, to, number of points; a halo outside takes the edge's shape
-LN_1Z = (0.0, float(np.log(6.0)), 25)
-LN_C = (0.0, float(np.log(40.0)), 49)
-GRIDS = dict(zip(AXES, (LOG_M, LN_1Z, LN_C), strict=True))
 DM_UNIT = electrons.PER_PROTON * electrons.CM3_PER_MSUN_KPC3 * electrons.PC_PER_KPC
-LN_10 = float(np.log(10.0))
+
+# The finest grids; every second, fourth, ... point is taken as curvature allows. Haloes outside take the edge's shape.
+FINEST = {
+    "mass": Axis(9.0, 16.0, 897),
+    "redshift": Axis(0.0, float(np.log(6.0)), 97, np.log1p),
+    "concentration": Axis(0.0, float(np.log(40.0)), 257, np.log),
+    "u": Axis(0.0, 1.0, 513),
+}
+TOLERANCE = {"mass": 1.5e-4, "redshift": 1.5e-4, "concentration": 6e-5, "u": 1e-4}  # of the value, from each axis
+N_NODES = 96
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class Projection:
     """The table of one model in one cosmology. Made by `projection`."""
 
     model: Model
     cosmos: Cosmos
-    axes: tuple[str, ...]
-    table: np.ndarray  # ln T (+ constants), over (axes..., u), flattened
+    axes: dict[str, Axis]
+    terms: list[list[Table]]
 
     def dm_rest(self, impact_r200c, log_m200c, z, c200c, r200c_kpc) -> np.ndarray:
         """Rest-frame column [pc cm-3] of whole haloes; divide by 1 + z for the observed DM.
 
-        impact_r200c  distance of the line from the centre over r200c;  r200c_kpc  proper kpc
+        impact_r200c  distance of the line from the centre over r200c, not negative;  r200c_kpc  proper kpc
         Arguments broadcast. Zero, never NaN, at and beyond the boundary. Masses beyond 1e9..1e16, redshifts above 5 and
-        concentrations beyond 1..40 take the table's edge.
+        concentrations beyond 1..40 take the shape at the table's edge.
         """
-        args = np.broadcast_arrays(impact_r200c, log_m200c, z, c200c, r200c_kpc)
-        flat = [np.ascontiguousarray(a, dtype=float).ravel() for a in args]
-        out = np.empty(flat[0].size)
-        for start in range(0, out.size, CHUNK):
-            part = slice(start, start + CHUNK)
-            out[part] = self._look_up(*(a[part] for a in flat))
-        return out.reshape(args[0].shape)
-
-    def _look_up(self, impact, log_m, z, c, r200c) -> np.ndarray:
-        u = impact / self.model.boundary_r200c
-        edge = np.maximum(1 - u * u, 0.0)
-        coordinates = {"mass": lambda: log_m, "redshift": lambda: np.log1p(z), "concentration": lambda: np.log(c)}
-        places = [_place(coordinates[a](), GRIDS[a]) for a in self.axes]
-        places.append(_place(np.sqrt(u), (0.0, 1.0, N_U)))
-        ln_t = _interpolate(self.table, places, [GRIDS[a][2] for a in self.axes] + [N_U])
-        return np.exp(ln_t + LN_10 * log_m) * np.sqrt(edge) / (r200c * r200c)
+        shape, flat = _flat(impact_r200c, log_m200c, z, c200c, r200c_kpc)
+        return self._whole(*flat).reshape(shape)
 
     def dm_rest_between(
         self, impact_r200c, log_m200c, z, c200c, r200c_kpc, from_r200c, to_r200c, n_nodes: int = 64
     ) -> np.ndarray:
         """Rest-frame column [pc cm-3] of the part of a halo between two depths along the line.
 
-        from_r200c, to_r200c  depth relative to the closest approach, in r200c, growing away from the observer; -inf and
-                              inf are allowed; the rest as in `dm_rest`
-        The share of the whole column is integrated by Gauss-Legendre from the closest approach to either side, with nodes
-        crowding there, so cusps are met; parts that join add up to the whole.
+        from_r200c, to_r200c  depth relative to the closest approach, in r200c, growing away from the observer; infinite
+                              ones are allowed; the rest as in `dm_rest`
+        The part's share of the whole column is integrated by Gauss-Legendre from the closest approach to either side,
+        with nodes crowding there, so cusps are met; parts that join add up to the whole.
         """
-        args = np.broadcast_arrays(impact_r200c, log_m200c, z, c200c, r200c_kpc, from_r200c, to_r200c)
-        flat = [np.ascontiguousarray(a, dtype=float).ravel() for a in args]
-        out = np.empty(flat[0].size)
-        for start in range(0, out.size, CHUNK):
-            part = slice(start, start + CHUNK)
-            out[part] = self._between(*(a[part] for a in flat), n_nodes)
-        return out.reshape(args[0].shape)
+        shape, flat = _flat(impact_r200c, log_m200c, z, c200c, r200c_kpc, from_r200c, to_r200c)
+        out = self._whole(*flat[:5])
+        for start in range(0, out.size, CHUNK // n_nodes):  # in cache, nodes included
+            part = slice(start, start + CHUNK // n_nodes)
+            impact, log_m, z, c, _, near, far = (a[part] for a in flat)
+            out[part] *= self._share_between(impact, log_m, z, c, near, far, n_nodes)
+        return out.reshape(shape)
 
-    def _between(self, impact, log_m, z, c, r200c, start, stop, n_nodes: int) -> np.ndarray:
-        whole = self._look_up(impact, log_m, z, c, r200c)
+    def _whole(self, impact, log_m, z, c, r200c) -> np.ndarray:
+        given = {"impact": impact, "mass": log_m, "redshift": z, "concentration": c}
+        return columns(self.terms, self.axes, self.model.boundary_r200c, given, r200c)
+
+    def _share_between(self, impact, log_m, z, c, near, far, n_nodes: int) -> np.ndarray:
         half_chord = np.sqrt(np.maximum(self.model.boundary_r200c**2 - impact**2, 0.0))
-        density = self._along(log_m, z, c)
-        start, stop = (np.clip(d, -half_chord, half_chord) for d in (start, stop))
-        columns = [along_line(density, impact, depth, n_nodes) for depth in (start, stop, half_chord)]
-        half = np.where(columns[2] > 0, columns[2], 1.0)
-        return whole * np.maximum(columns[1] - columns[0], 0.0) / (2 * half)
+        density = self._density_along(log_m, z, c)
+        near, far = (np.clip(d, -half_chord, half_chord) for d in (near, far))
+        to_near, to_far, half = (along_line(density, impact, depth, n_nodes) for depth in (near, far, half_chord))
+        return np.maximum(to_far - to_near, 0.0) / np.where(half > 0, 2 * half, 1.0)
 
-    def _along(self, log_m, z, c):
-        m, z, c = (a[..., None] for a in (log_m, z, c))
-        scales = [
-            w * part.amplitude(log_m, z[..., 0], c[..., 0], self.cosmos)
-            for w, part in zip(self.model.weights(log_m), self.model.components, strict=True)
+    def _density_along(self, log_m, z, c):
+        """The relative density of these haloes as a function of x with a trailing axis, amplitudes worked out once."""
+        parts = [
+            ((weight * part.amplitude(log_m, z, c, self.cosmos))[..., None], part.shape)
+            for weight, part in zip(self.model.weights(log_m), self.model.components, strict=True)
         ]
-        parts = list(zip(scales, self.model.components, strict=True))
+        args = tuple(a[..., None] for a in (log_m, z, c))
 
         def density(x):
-            x = np.maximum(x, 1e-9)
-            return sum(np.asarray(s)[..., None] * part.shape.density(x, m, z, c) for s, part in parts)
+            return sum(scale * shape.density(np.maximum(x, 1e-9), *args) for scale, shape in parts)
 
         return density
 
 
 def projection(model: Model, cosmos: Cosmos) -> Projection:
-    """The table of `model` in `cosmos`, made once a process (about a second at most)."""
+    """The tables of `model` in `cosmos`, made once a process, in about half a second at most."""
     return _projection(model, cosmos)
 
 
 @lru_cache(maxsize=32)
 def _projection(model: Model, cosmos: Cosmos) -> Projection:
-    table = make_table(model, cosmos)
-    return Projection(model, cosmos, model.depends_on, np.ascontiguousarray(table.ravel()))
+    terms = [factors(model, k, cosmos) for k in range(len(model.components))]
+    axes = choose_axes([factor for term in terms for factor in term])
+    return Projection(model, cosmos, axes, [[factor.pack(axes) for factor in term] for term in terms])
 
 
-def make_table(model: Model, cosmos: Cosmos, n_nodes: int = 96) -> np.ndarray:
-    """ln(unit f_b T) over (the axes the model depends on..., u)."""
-    total = 0.0
-    for weight, part in zip(_weights(model), model.components, strict=True):
-        kept = part.amplitude(*_grid(part.depends_on), cosmos)
-        total = total + (weight * kept)[..., None] * _projected_shape(part.shape, model.boundary_r200c, n_nodes)
-    shape = [GRIDS[a][2] for a in model.depends_on]
-    return np.log(DM_UNIT * cosmos.baryon_share * total).reshape(*shape, N_U)
+@dataclass(frozen=True)
+class _Factor:
+    """One factor of a column, to be tabulated: its axes, and its logarithm at any place."""
+
+    axes: tuple[str, ...]
+    log_value: Callable[..., np.ndarray]  # of u, log_m200c, z, c200c, which broadcast; and the number of nodes
+
+    def pack(self, axes: dict[str, Axis]) -> Table:
+        """The table over an open grid of the axes; one point of u at a time, so that nodes stay in cache."""
+        m, z, c = _grid(axes, self.axes)
+        u = axes["u"].points ** 2 if "u" in self.axes else np.zeros(1)
+        size = np.broadcast_shapes(m.shape, z.shape, c.shape)
+        values = np.stack([np.broadcast_to(self.log_value(one, m, z, c, N_NODES), size) for one in u], axis=-1)
+        return Table.pack(self.axes, values.reshape([axes[a].size for a in self.axes]))
+
+    def along(self, name: str, places: int = 40) -> np.ndarray:
+        """The logarithm on the finest grid of one axis, at fixed places spread over the others: (places, points)."""
+        spread = (np.arange(1, places + 1)[:, None] * np.array([0.8192, 0.6711, 0.5497, 0.4503])) % 1
+        at = {a: FINEST[a].low + (FINEST[a].high - FINEST[a].low) * spread[:, [k]] for k, a in enumerate(FINEST)}
+        at[name] = FINEST[name].points[None, :]
+        z, c = np.expm1(at["redshift"]), np.exp(at["concentration"])
+        return self.log_value(at["u"] ** 2, at["mass"], z, c, N_NODES // 2)
 
 
-def _grid(axes: tuple[str, ...]) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
-    """Mass, redshift and concentration as a 3-d open grid; axes not named have one point, in the middle."""
+def factors(model: Model, k: int, cosmos: Cosmos) -> list[_Factor]:
+    """ln T and ln A of component k: one factor where A has no axis that T has not, else two."""
+    part = model.components[k]
+    unit = np.log(DM_UNIT * cosmos.baryon_share)
+    shape_axes = part.shape.depends_on or ("concentration",)
+    amplitude_axes = set(part.depends_on) | ({"mass"} if len(model.components) > 1 else set())
+
+    def log_column(u, m, z, c, n_nodes):
+        return unit + np.log(_projected(part.shape, model.boundary_r200c, u, m, z, c, n_nodes))
+
+    def log_amplitude(u, m, z, c, n_nodes):
+        return model.log_weight(k, m) + np.log(part.amplitude(m, z, c, cosmos))
+
+    def both(*args):
+        return log_column(*args) + log_amplitude(*args)
+
+    if amplitude_axes <= set(shape_axes):
+        return [_Factor((*shape_axes, "u"), both)]
+    wanted = amplitude_axes | {"mass", "concentration"}  # two axes at least, for packing
+    return [_Factor((*shape_axes, "u"), log_column), _Factor(tuple(a for a in AXES if a in wanted), log_amplitude)]
+
+
+def choose_axes(factors: list[_Factor]) -> dict[str, Axis]:
+    """The axes of a model's tables, each just fine enough for linear interpolation of all factors along it."""
+    axes = {}
+    for name, fine in FINEST.items():
+        curves = [factor.along(name) for factor in factors if name in factor.axes]
+        if curves:
+            stride = min(_coarsest(curve, TOLERANCE[name]) for curve in curves)
+            axes[name] = Axis(fine.low, fine.high, (fine.size - 1) // stride + 1, fine.transform)
+    return axes
+
+
+def _coarsest(curves: np.ndarray, tolerance: float) -> int:
+    """Largest stride, a power of two, at which the points between are met by linear interpolation."""
+    stride, last = 1, curves.shape[-1] - 1
+    while last % (2 * stride) == 0:
+        knots, middle = curves[:, :: 2 * stride], curves[:, stride :: 2 * stride]
+        if np.max(np.abs(middle - 0.5 * (knots[:, :-1] + knots[:, 1:]))) > tolerance:
+            break
+        stride *= 2
+    return stride
+
+
+def _grid(axes: dict[str, Axis], names: tuple[str, ...]) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    """Mass, redshift and concentration as an open grid of three dimensions; axes not named have one point."""
     points = []
-    for k, axis in enumerate(AXES):
-        low, high, n = GRIDS[axis]
-        values = np.linspace(low, high, n) if axis in axes else np.array([0.5 * (low + high)])
+    for k, name in enumerate(AXES):
+        values = axes[name].points if name in names else np.array([0.5 * (FINEST[name].low + FINEST[name].high)])
         points.append(values.reshape([-1 if j == k else 1 for j in range(3)]))
     return points[0], np.expm1(points[1]), np.exp(points[2])
 
 
-def _weights(model: Model) -> list[np.ndarray]:
-    axes = ("mass",) if len(model.components) > 1 else ()
-    return model.weights(_grid(axes)[0])
-
-
-def _projected_shape(shape, boundary: float, n_nodes: int) -> np.ndarray:
+def _projected(shape, boundary: float, u, log_m, z, c, n_nodes: int) -> np.ndarray:
+    """T of the module's first lines for a shape; arguments broadcast."""
     nodes, weights = crowded_rule(n_nodes, 4)
-    m, z, c = (a[..., None] for a in _grid(shape.depends_on))
-    columns = []
-    for u in np.linspace(0.0, 1.0, N_U) ** 2:
-        x = boundary * np.sqrt(u**2 + (1 - u**2) * nodes**2)
-        columns.append(np.sum(shape.density(x, m, z, c) * weights, axis=-1))
-    return 2 * boundary * np.stack(np.broadcast_arrays(*columns), axis=-1) / (4 * np.pi)
+    u, log_m, z, c = (np.asarray(a, dtype=float)[..., None] for a in (u, log_m, z, c))
+    x = boundary * np.sqrt(u**2 + (1 - u**2) * nodes**2)
+    return boundary / (2 * np.pi) * np.sum(shape.density(x, log_m, z, c) * weights, axis=-1)
 
 
-def _place(value: np.ndarray, grid: tuple[float, float, int]) -> tuple[np.ndarray, np.ndarray]:
-    """Index of the cell below and the place inside it, 0..1, on a uniform grid; clamped to the grid."""
-    low, high, n = grid
-    t = np.clip((value - low) * ((n - 1) / (high - low)), 0.0, n - 1)
-    cell = np.minimum(t.astype(np.int32), n - 2)
-    return cell, t - cell
-
-
-def _interpolate(table: np.ndarray, places, sizes: list[int]) -> np.ndarray:
-    """Multilinear interpolation, the last axis fastest."""
-    base = places[0][0]
-    for (cell, _), size in zip(places[1:], sizes[1:], strict=True):
-        base = base * size + cell
-    steps = np.cumprod([1, *sizes[:0:-1]])[::-1]
-    return _corner(table, base, [f for _, f in places], steps, 0)
-
-
-def _corner(table, base, fractions, steps, offset: int) -> np.ndarray:
-    if not fractions:
-        return np.take(table[offset:], base, mode="clip")
-    low = _corner(table, base, fractions[1:], steps[1:], offset)
-    high = _corner(table, base, fractions[1:], steps[1:], offset + int(steps[0]))
-    return low + fractions[0] * (high - low)
+def _flat(*arrays) -> tuple[tuple[int, ...], list[np.ndarray]]:
+    """The common shape, and the arrays broadcast to it, flat, contiguous and double."""
+    full = np.broadcast_arrays(*arrays)
+    return full[0].shape, [np.ascontiguousarray(a, dtype=float).ravel() for a in full]

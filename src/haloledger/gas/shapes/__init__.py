@@ -1,4 +1,4 @@
-"""Density shapes, one a file. Adding one: write the class in a new file, name it in SHAPES, and give it a model file."""
+"""Density shapes, one a file. Adding one: write its class in a new file, name it in SHAPES, give it a model file."""
 
 from haloledger.gas.shapes.base import AXES, Shape
 from haloledger.gas.shapes.gnfw_fit import GNFWFit

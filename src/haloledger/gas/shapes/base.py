@@ -14,8 +14,8 @@ AXES = ("mass", "redshift", "concentration")
 class Shape:
     """Base of all density shapes.
 
-    A subclass gives `density(x, log_m200c, z, c200c)` with x = r / r200c, arrays that broadcast, above 0 for every x > 0
-    up to `x_max`, and says in `fixes` what its numbers are:
+    A subclass gives `density(x, log_m200c, z, c200c)` with x = r / r200c, arrays that broadcast, above 0 for every
+    x > 0 up to `x_max`, and says in `fixes` what its numbers are:
     "nothing"    any normalisation will do, the kept fraction sets it
     "gas"        rho_gas 4 pi r200c^3 / (f_b M200c): absolute, takes no kept fraction
     "electrons"  n_e [cm-3]: absolute, unless the model file states a kept fraction

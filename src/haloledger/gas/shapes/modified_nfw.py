@@ -44,7 +44,5 @@ class ModifiedNFW(Shape):
         if self.core and not 0.001 <= self.core < 1:
             return f"core = {self.core} is outside 0.001..1 (in r200c); leave it out or write 0.01"
         if self.inner_slope < 0.5 and not self.core:
-            return (
-                f"inner_slope = {self.inner_slope} gives an infinite column at the centre; add core = 0.01 (in r200c)"
-            )
+            return f"inner_slope = {self.inner_slope} has an infinite column at the centre; add core = 0.01 (in r200c)"
         return None

@@ -19,12 +19,13 @@ COLUMNS = ("r_over_r200c", "log_m200c", "n_e")
 class DensityTable(Shape):
     """density = n_e(x, M) [cm-3]: monotone cubic in (ln x, ln n_e), linear in log M between the masses of the table.
 
-    file         ECSV, CSV or any table astropy reads, with columns r_over_r200c, log_m200c, n_e [cm-3]: the same radii for
-                 every mass. Inside the smallest radius the density is constant; masses beyond the table take its nearest.
+    file         ECSV, CSV or any table astropy reads, with columns r_over_r200c, log_m200c, n_e [cm-3]: the same
+                 radii for every mass. Inside the smallest radius the density is constant; masses beyond the table take
+                 its nearest.
     at_redshift  the redshift the densities are for; at others they scale with the critical density
 
-    Every n_e must be above 0 and the radii must reach the model's boundary. A [kept] section in the model file keeps the
-    shape and replaces the amount.
+    Every n_e must be above 0 and the radii must reach the model's boundary. A [kept] section in the model file keeps
+    the shape and replaces the amount.
     """
 
     kind = "table"
@@ -81,7 +82,7 @@ def read_density_table(path: Path) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
         )
     unit = table["n_e"].unit
     scale = 1.0 if unit is None else _to_cm3(unit, path)
-    r, log_m, n_e = (np.ma.filled(np.ma.asarray(table[name], dtype=float), np.nan) for name in COLUMNS)
+    r, log_m, n_e = [_plain(table[name], path) for name in COLUMNS]
     for name, bad, want in (
         ("r_over_r200c", ~(r > 0), "a radius above 0"),
         ("log_m200c", ~((log_m > 5) & (log_m < 17)), "a log10 mass in Msun between 5 and 17"),
@@ -108,3 +109,11 @@ def _to_cm3(unit, path: Path) -> float:
         return float(unit.to("cm-3"))
     except Exception:
         raise InputError(f"{path}: n_e is in '{unit}', not convertible to cm-3. Write it in cm-3.") from None
+
+
+def _plain(column, path: Path) -> np.ndarray:
+    """A column as doubles, masked cells as NaN."""
+    try:
+        return np.ma.filled(np.ma.asarray(column).astype(float), np.nan)
+    except ValueError:
+        raise InputError(f"{path}: column '{column.name}' holds text. Write numbers.") from None
