@@ -123,7 +123,15 @@ def test_units_are_converted():
     assert got.sigma_v_kms[0] == pytest.approx(500.0)
     assert got.lx_1e44_erg_s[0] == pytest.approx(3.0)  # 1e37 W = 1e44 erg/s
     assert got.centre_err_kpc[0] == pytest.approx(100.0)
-    bursts = QTable({"burst": ["a"], "ra": [1.0], "dec": [0.0], "dm": [1e6] * u.pc / u.m**3 * 1e3, "loc_major_arcsec": [1.0] * u.arcmin})
+    bursts = QTable(
+        {
+            "burst": ["a"],
+            "ra": [1.0],
+            "dec": [0.0],
+            "dm": [1e6] * u.pc / u.m**3 * 1e3,
+            "loc_major_arcsec": [1.0] * u.arcmin,
+        }
+    )
     got = read_bursts(bursts)
     assert got.dm[0] == pytest.approx(1000.0)
     assert got.loc_major_arcsec[0] == pytest.approx(60.0)
@@ -131,7 +139,16 @@ def test_units_are_converted():
 
 
 def test_defaults_are_said():
-    table = Table({"id": ["a", "b"], "ra": [1, 2], "dec": [1, 2], "z": [0.1, 0.4], "z_kind": ["spec", "phot"], "log_mstar": [10.0, 11.0]})
+    table = Table(
+        {
+            "id": ["a", "b"],
+            "ra": [1, 2],
+            "dec": [1, 2],
+            "z": [0.1, 0.4],
+            "z_kind": ["spec", "phot"],
+            "log_mstar": [10.0, 11.0],
+        }
+    )
     got = read_galaxies(table)
     assert got.z_err.tolist() == [0.0, pytest.approx(0.042)]
     assert got.log_mstar_err.tolist() == [0.2, 0.2]

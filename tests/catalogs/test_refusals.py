@@ -194,7 +194,9 @@ def test_what_is_no_table(tmp_path, name, content, message):
 @pytest.mark.parametrize("ending", ["fits", "parquet", "vot", "csv.gz"])
 def test_a_file_cut_short(tmp_path, ending, keep):
     n = 2000
-    table = Table({"id": np.arange(n).astype(str), "ra": np.linspace(0, 359, n), "dec": np.zeros(n), "z": np.full(n, 0.1)})
+    table = Table(
+        {"id": np.arange(n).astype(str), "ra": np.linspace(0, 359, n), "dec": np.zeros(n), "z": np.full(n, 0.1)}
+    )
     path = tmp_path / f"t.{ending}"
     if ending == "csv.gz":
         import gzip

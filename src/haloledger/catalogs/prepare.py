@@ -166,9 +166,7 @@ def _bare_factor(file: str, native: str, unit: str, spec: Field, values: np.ndar
             f"{file}: column '{native}' is in '{unit}', which does not convert to mag. Write apparent magnitudes."
         )
     if spec.unit == "" and parsed.is_equivalent(u.km / u.s):
-        raise InputError(
-            f"{file}: column '{native}' is in '{unit}', which does not convert to a redshift. Write v/c."
-        )
+        raise InputError(f"{file}: column '{native}' is in '{unit}', which does not convert to a redshift. Write v/c.")
     try:
         return factor(unit, spec, np.nan)
     except (ValueError, TypeError):
