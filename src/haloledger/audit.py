@@ -2,8 +2,10 @@
 
 from __future__ import annotations
 
+import sys
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
+from types import ModuleType
 
 from haloledger.catalogs import read_bursts, read_footprint, read_galaxies, read_groups
 from haloledger.catalogs.canonical import Bursts, Galaxies, Groups
@@ -78,7 +80,7 @@ def audit(
     progress   called with (done, total, what)
     Raises InputError, with what to do next, before any work where the input cannot be used.
     """
-    _check_numbers(draws, seed)
+    _check_numbers(draws, seed, models)
     tell = progress or (lambda done, total, what: None)
     gas = [load_model(m) for m in models]
     universe = Universe(seed=seed, n_draws=draws, fixed=fixed, held=checked(hold or {}))
@@ -104,11 +106,13 @@ def audit(
     return _gather(ledgers, inputs, haloes, gas, run_record(options, given, gas))
 
 
-def _check_numbers(draws: int, seed: int) -> None:
+def _check_numbers(draws: int, seed: int, models: Sequence[str]) -> None:
     if draws < 1:
         raise InputError(f"--draws {draws}: at least one universe is needed. Write 1000, or use --fixed.")
     if seed < 0:
         raise InputError(f"--seed {seed}: seeds are whole numbers from 0 up. Write 1.")
+    if not models:
+        raise InputError("no halo model given. Write at least one --model, for instance --model blended.")
 
 
 def _read(bursts, galaxies, groups, footprints) -> Inputs:
@@ -145,3 +149,13 @@ def _gather(ledgers: list[Ledger], inputs: Inputs, haloes: Haloes, gas: list[Mod
         draws=term_draws_frame(ledgers),
         entry_draws=entry_draws_frame(ledgers),
     )
+
+
+class _Callable(ModuleType):
+    """The package's main function and this module share the name `haloledger.audit`: calling the module audits."""
+
+    def __call__(self, *args, **kwargs) -> Ledgers:
+        return audit(*args, **kwargs)
+
+
+sys.modules[__name__].__class__ = _Callable

@@ -14,7 +14,8 @@ def test_rows_do_not_depend_on_order_or_company():
 
 def test_more_draws_keep_the_first():
     assert np.array_equal(
-        Universe(seed=3, n_draws=200).normals("mass", ["a"])[:, :50], Universe(seed=3, n_draws=50).normals("mass", ["a"])
+        Universe(seed=3, n_draws=200).normals("mass", ["a"])[:, :50],
+        Universe(seed=3, n_draws=50).normals("mass", ["a"]),
     )
 
 

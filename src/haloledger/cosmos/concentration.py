@@ -40,7 +40,7 @@ def concentration(relation: str | float, log_m200c, z, cosmos: Cosmos) -> np.nda
     if relation not in RELATIONS:
         raise InputError(f"concentration '{relation}' is not known. Write one of {', '.join(RELATIONS)}, or a number.")
     points = np.stack(np.broadcast_arrays(np.clip(log_m200c, LOG_M[0], LOG_M[-1]), np.clip(z, Z[0], Z[-1])), axis=-1)
-    return np.exp(_table(relation, cosmos.name)(points))
+    return np.exp(_table(relation, cosmos.name)(points)).reshape(shape)
 
 
 @lru_cache(maxsize=8)

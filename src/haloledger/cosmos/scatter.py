@@ -52,7 +52,7 @@ def sigma_of(z, feedback_f: float = FEEDBACK_F) -> np.ndarray:
 def relative_dm(z, score, feedback_f: float = FEEDBACK_F) -> np.ndarray:
     """D = DM / <DM> at a normal score (0 the median, +-1 the 16 and 84% points); shapes broadcast."""
     s, q = np.broadcast_arrays(np.log(sigma_of(z, feedback_f)), np.clip(score, NORMAL_SCORE[0], NORMAL_SCORE[-1]))
-    return np.exp(_quantiles()(np.stack([s, q], axis=-1)))
+    return np.exp(_quantiles()(np.stack([s, q], axis=-1))).reshape(s.shape)
 
 
 @lru_cache(maxsize=1)

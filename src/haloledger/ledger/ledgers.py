@@ -42,18 +42,18 @@ class Ledgers:
 
 def make_table(rows: list[dict], columns: list[Column]):
     """A QTable with units and meanings from rows of plain values; None and absent cells are masked."""
-    from astropy.table import MaskedColumn, QTable, Table
+    from astropy.table import Column as PlainColumn
+    from astropy.table import MaskedColumn, QTable
 
-    table = Table(masked=True)
+    made = []
     for column in columns:
         values = [row.get(column.name) for row in rows]
         mask = [v is None for v in values]
-        data = _filled(values, column)
         unit = column.unit if column.unit not in ("", "text") else None
-        table[column.name] = MaskedColumn(data, mask=mask, unit=unit, description=column.meaning)
-        if not any(mask):
-            table[column.name] = Table.Column(data, unit=unit, description=column.meaning)
-    return QTable(table)
+        about = {"name": column.name, "unit": unit, "description": column.meaning}
+        data = _filled(values, column)
+        made.append(MaskedColumn(data, mask=mask, **about) if any(mask) else PlainColumn(data, **about))
+    return QTable(made)
 
 
 def sightlines_table(rows: list[dict]):

@@ -94,7 +94,7 @@ def make_ledger(ground: Ground, i: int, keep_draws: bool = False) -> list[Ledger
     """The ledgers of burst i, one a model."""
     sightline, ends, note = _sightline(ground, i)
     index = ground.near[i]
-    index = index[~is_host(ground.bursts, i, ground.haloes, index)]
+    index = index[~is_host(ground.bursts, i, ground.haloes, index, ground.cosmos)]
     reach, said = reach_of(sightline.ra_deg, sightline.dec_deg, ground.footprints)
     note = [*note, said, *relation_notes(ground.haloes, index, ground.universe)]
     crossings: dict[str | float, Crossing] = {}

@@ -34,11 +34,8 @@ def electron_model(choice: str) -> Callable[[float, float], float] | None:
         ) from None
 
     def dm_to_edge(l_deg: float, b_deg: float) -> float:
-        return _first_number(model(ldeg=l_deg, bdeg=b_deg, dmd=EDGE_KPC, ndir=-1, classic=False))
+        # the library gives tables of names, values, units and descriptions, in this order
+        _, values, _, _ = model(ldeg=l_deg, bdeg=b_deg, dmd=EDGE_KPC, ndir=-1, classic=False)
+        return float(values["DM"])
 
     return dm_to_edge
-
-
-def _first_number(result) -> float:
-    table = result[0] if isinstance(result, tuple) else result
-    return float(table["DM"])

@@ -13,15 +13,19 @@ from haloledger.sightlines.draws import LIGHT_KMS, PECULIAR_KMS
 from haloledger.sightlines.geometry import separation_deg
 
 LEAST_ARCSEC = 2.0
-"""A galaxy this close to a well localised burst, at its redshift, is taken as the host."""
+LEAST_KPC = 15.0
+"""The nearest galaxy this close to a burst, at its redshift, is taken as the host."""
 WIDEST_ARCSEC = 20.0
 """A poor localisation does not turn every galaxy inside it into the host."""
 WIDEST_Z_ERR = 0.012
 """A group with a larger redshift error, over 1 + z, cannot be said to hold the burst."""
 
 
-def is_host(bursts: Bursts, i: int, haloes: Haloes, index: np.ndarray) -> np.ndarray:
-    """Rows of `index` that are the host galaxy of burst i: by host_id, or by position and redshift; (n_index,) bool."""
+def is_host(bursts: Bursts, i: int, haloes: Haloes, index: np.ndarray, cosmos: Cosmos) -> np.ndarray:
+    """Rows of `index` that are the host galaxy of burst i (n_index,) bool: by host_id, or by position and redshift.
+
+    By position it is the nearest galaxy whose redshift agrees, at most LEAST_KPC or three sigma of the localisation away.
+    """
     rows = haloes.source_rows[index]
     wanted = str(bursts.host[i])
     if wanted:
@@ -30,11 +34,13 @@ def is_host(bursts: Bursts, i: int, haloes: Haloes, index: np.ndarray) -> np.nda
             return np.array(named)
     if np.isnan(bursts.z[i]):
         return np.zeros(len(index), bool)
-    radius = np.clip(3 * np.nan_to_num(bursts.loc_major_arcsec[i]), LEAST_ARCSEC, WIDEST_ARCSEC)
+    seen_arcsec = np.degrees(LEAST_KPC / cosmos.angular_distance_kpc(max(bursts.z[i], 1e-4))) * 3600
+    radius = max(np.clip(3 * np.nan_to_num(bursts.loc_major_arcsec[i]), LEAST_ARCSEC, WIDEST_ARCSEC), seen_arcsec)
     apart = separation_deg(haloes.ra_deg[index], haloes.dec_deg[index], bursts.ra_deg[i], bursts.dec_deg[i]) * 3600
     gap = np.abs(haloes.z[index] - bursts.z[i])
     error = np.sqrt(haloes.z_err[index] ** 2 + np.nan_to_num(bursts.z_err[i]) ** 2 + (PECULIAR_KMS / LIGHT_KMS) ** 2)
-    return (haloes.kind[index] == "galaxy") & (apart <= radius) & (gap <= 3 * error)
+    fits = (haloes.kind[index] == "galaxy") & (apart <= radius) & (gap <= 3 * error)
+    return fits & (apart <= np.min(apart[fits], initial=np.inf))
 
 
 def holds_burst(

@@ -8,6 +8,7 @@ observed DM with the expected one may be printed for such a burst: it would be c
 from __future__ import annotations
 
 import numpy as np
+from scipy.special import ndtr, ndtri
 
 from haloledger.cosmos.background import Cosmos
 from haloledger.cosmos.mean_dm import mean_cosmic_dm
@@ -17,6 +18,8 @@ from haloledger.sightlines.draws import Z_LEAST
 from haloledger.sightlines.terms import defaults
 
 N_Z = 240
+SHARES = (np.arange(80) + 0.5) / 80
+"""Equal shares of the cosmic and the host distribution over which the likelihood is summed."""
 
 
 def redshift_from_dm(
@@ -24,30 +27,29 @@ def redshift_from_dm(
 ) -> np.ndarray:
     """Redshift draws (n_draws,) given observed DM, Milky Way and host rest-frame DM draws, all [pc cm-3].
 
-    Draw k uses the Milky Way of universe k; the host and the cosmic scatter are averaged over.
+    Draw k uses the Milky Way of universe k; host and cosmic scatter are integrated over, since both are weighed by how
+    well they explain the DM.
     """
-    law = defaults()["redshift"]
-    z = np.linspace(0.002, law["z_max"], N_Z)
-    score = universe.normals("cosmic for redshift", [burst])[0]
-    scores = np.linspace(-3, 3, 61)
-    weights = np.exp(-0.5 * scores**2)
-    mean = mean_cosmic_dm(z, cosmos)
-    cosmic = mean[:, None] * relative_dm(z[:, None], scores[None, :])
-    # the host of universe k and the cosmic term over its whole distribution
-    extragalactic = np.maximum(dm - milky_way, 1.0)
-    cdf = np.empty((N_Z, universe.n_draws))
-    for j in range(N_Z):
-        left = extragalactic[None, :] - host_rest[None, :] / (1 + z[j])
-        gap = (left - cosmic[j][:, None]) / (law["kernel"] * extragalactic[None, :])
-        cdf[j] = (weights[:, None] * np.exp(-0.5 * np.minimum(gap**2, 200.0))).sum(axis=0)
-    cdf = np.cumsum(cdf + 1e-300, axis=0)
+    z = np.linspace(0.002, defaults()["redshift"]["z_max"], N_Z)
+    likelihood = _likelihood(np.maximum(dm - milky_way, 1.0), z, host_rest, cosmos)
+    cdf = np.cumsum(likelihood + 1e-300, axis=0)
     cdf /= cdf[-1]
-    # a normal score turned into a uniform keeps the row keyed by the burst alone
-    from scipy.special import ndtr
-
-    wanted = ndtr(score)
+    wanted = ndtr(universe.normals("redshift from dm", [burst])[0])
     above = np.argmax(cdf >= wanted[None, :], axis=0)
     low = np.where(above > 0, np.take_along_axis(cdf, np.maximum(above - 1, 0)[None, :], 0)[0], 0.0)
     high = np.take_along_axis(cdf, above[None, :], 0)[0]
-    step = z[1] - z[0]
-    return np.maximum(z[above] - step * (high - wanted) / np.maximum(high - low, 1e-300), Z_LEAST)
+    return np.maximum(z[above] - (z[1] - z[0]) * (high - wanted) / np.maximum(high - low, 1e-300), Z_LEAST)
+
+
+def _likelihood(extragalactic: np.ndarray, z: np.ndarray, host_rest: np.ndarray, cosmos: Cosmos) -> np.ndarray:
+    """P(DM | z) up to a factor (n_z, n_draws): share of cosmic + host values within a few per cent of the DM."""
+    kernel = defaults()["redshift"]["kernel"]
+    mean = mean_cosmic_dm(z, cosmos)
+    hosts = np.quantile(host_rest, SHARES)
+    rows = np.empty((len(z), len(extragalactic)))
+    for j in range(len(z)):
+        cosmic = mean[j] * relative_dm(z[j], ndtri(SHARES))
+        values = np.sort((cosmic[:, None] + hosts[None, :] / (1 + z[j])).ravel())
+        high, low = (np.searchsorted(values, extragalactic * (1 + s * kernel)) for s in (1, -1))
+        rows[j] = high - low
+    return rows
