@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import hashlib
 import tomllib
 from dataclasses import MISSING, fields
 from difflib import get_close_matches
@@ -14,6 +15,7 @@ from haloledger.gas.components import Component
 from haloledger.gas.kept import LAWS, RADII, KeptLaw
 from haloledger.gas.models import Model
 from haloledger.gas.shapes import SHAPES, Shape
+from haloledger.gas.shapes.table import DensityTable
 from haloledger.gas.spread import Spread
 from haloledger.paths import data_folder
 
@@ -32,28 +34,32 @@ def shipped_models() -> dict[str, Path]:
 def read_model(name_or_path: str) -> Model:
     """The model of that name or file. A name that ends in .toml, or holds a slash, is a file."""
     text = str(name_or_path)
-    if text.endswith(".toml") or "/" in text:
-        path = Path(text)
-        if not path.is_file():
-            raise InputError(f"--model: no file {text}. Write the path of a model file, or one of {_names()}.")
-    else:
-        shipped = shipped_models()
-        if text not in shipped:
-            raise InputError(f"--model: no model '{text}'.{_near(text, shipped)} Models: {_names()}; or a .toml file.")
-        path = shipped[text]
-    return _read(path.resolve(), str(path))
+    if not text.endswith(".toml") and "/" not in text:
+        return _shipped(text)
+    path = Path(text)
+    if not path.is_file():
+        raise InputError(f"--model: no file {text}. Write the path of a model file, or one of {_names()}.")
+    return _read(path.resolve(), text)
 
 
 @lru_cache(maxsize=64)
+def _shipped(name: str) -> Model:
+    shipped = shipped_models()
+    if name not in shipped:
+        raise InputError(f"--model: no model '{name}'.{_near(name, shipped)} Models: {_names()}; or a .toml file.")
+    return _read(shipped[name], shipped[name].name)
+
+
 def _read(path: Path, shown: str) -> Model:
+    content = path.read_bytes()
     try:
-        data = tomllib.loads(path.read_text(encoding="utf-8"))
+        data = tomllib.loads(content.decode("utf-8"))
     except (tomllib.TOMLDecodeError, UnicodeDecodeError) as fault:
         raise InputError(f"{shown}: not TOML: {fault}. Start from one of the files in halo_models/.") from None
-    return _model(data, path, shown)
+    return _model(data, path, shown, content)
 
 
-def _model(data: dict[str, Any], path: Path, shown: str) -> Model:
+def _model(data: dict[str, Any], path: Path, shown: str, content: bytes) -> Model:
     _keys(data, REQUIRED, OPTIONAL, shown, "")
     boundary = _number(data, "boundary", 0.3, 4.0, shown, "")
     validity = _table(data, "validity", shown)
@@ -78,6 +84,7 @@ def _model(data: dict[str, Any], path: Path, shown: str) -> Model:
         notes=tuple(data.get("notes", ())),
         file=path.name,
         raw=data,
+        sha256=_sha256(content, components),
     )
 
 
@@ -163,6 +170,15 @@ def _value(value: Any, text: bool, shown: str, where: str) -> Any:
     if isinstance(value, bool) or not isinstance(value, int | float) or not abs(value) < 1e30:
         raise InputError(f"{shown}: {where} = {value!r}. Write a number.")
     return float(value)
+
+
+def _sha256(content: bytes, components: tuple[Component, ...]) -> str:
+    """Of the model file and the density tables it names: equal where the numbers are."""
+    digest = hashlib.sha256(content)
+    for part in components:
+        if isinstance(part.shape, DensityTable):
+            digest.update(Path(part.shape.file).read_bytes())
+    return digest.hexdigest()
 
 
 def _spread(data: dict[str, Any], shown: str) -> Spread:

@@ -14,6 +14,8 @@ from haloledger.gas.quadrature import enclosed
 from haloledger.gas.shapes import AXES
 from haloledger.gas.spread import Spread
 
+DEFAULT_MODEL = "blended"
+
 
 @dataclass(frozen=True, eq=False)
 class Model:
@@ -35,6 +37,13 @@ class Model:
     notes: tuple[str, ...]
     file: str
     raw: dict[str, Any] = field(repr=False)
+    sha256: str
+
+    def __eq__(self, other: object) -> bool:
+        return isinstance(other, Model) and self.sha256 == other.sha256
+
+    def __hash__(self) -> int:
+        return hash(self.sha256)
 
     @property
     def spread_shared_dex(self) -> float:
@@ -123,7 +132,8 @@ class Model:
 
     def stated(self) -> dict[str, Any]:
         """What the file states, for output: plain values only."""
-        return {"name": self.name, "file": self.file, **{k: v for k, v in self.raw.items() if k != "name"}}
+        rest = {key: value for key, value in self.raw.items() if key != "name"}
+        return {"name": self.name, "file": self.file, "sha256": self.sha256, **rest}
 
 
 def load_model(name_or_path: str) -> Model:

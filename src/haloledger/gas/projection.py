@@ -15,7 +15,6 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass
-from functools import lru_cache
 
 import numpy as np
 
@@ -103,14 +102,15 @@ class Projection:
 
 def projection(model: Model, cosmos: Cosmos) -> Projection:
     """The tables of `model` in `cosmos`, made once a process, in about half a second at most."""
-    return _projection(model, cosmos)
+    key = (model.sha256, cosmos.name)  # not the objects: they may have come from another process
+    if key not in _MADE:
+        terms = [factors(model, k, cosmos) for k in range(len(model.components))]
+        axes = choose_axes([factor for term in terms for factor in term])
+        _MADE[key] = Projection(model, cosmos, axes, [[factor.pack(axes) for factor in term] for term in terms])
+    return _MADE[key]
 
 
-@lru_cache(maxsize=32)
-def _projection(model: Model, cosmos: Cosmos) -> Projection:
-    terms = [factors(model, k, cosmos) for k in range(len(model.components))]
-    axes = choose_axes([factor for term in terms for factor in term])
-    return Projection(model, cosmos, axes, [[factor.pack(axes) for factor in term] for term in terms])
+_MADE: dict[tuple[str, str], Projection] = {}
 
 
 @dataclass(frozen=True)
