@@ -58,10 +58,10 @@ def group_card(tmp_path, top="", mass='{ column = "M", unit = "Msun" }', more='[
 BROKEN = [
     ({"top": 'tittle = "x"'}, r"unknown key 'tittle' at the top\. Did you mean 'title'\?"),
     ({"more": '[redshift]\nfrmae = "cmb"'}, r"unknown key 'frmae' at \[redshift\]\. Did you mean 'frame'\?"),
-    ({"more": '[redshift]\nframe = "CMBR"'}, r"redshift\.frame = 'CMBR' is not known\. Did you mean 'cmb'\? Write one of"),
+    ({"more": '[redshift]\nframe = "CMBR"'}, r"redshift\.frame = 'CMBR' is not known\. Did you mean 'cmb'\? Write one"),
     ({"more": "[redshift]\nerror = true"}, r"redshift\.error = True is not a float"),
     ({"more": 'ma_r = "R"'}, r"columns\.ma_r is no column of galaxies\. Did you mean 'mag_r'\?"),
-    ({"mstar": '{ column = "M", unti = "Msun" }'}, r"unknown key 'unti' at \[columns\.log_mstar\]\. Did you mean 'unit'\?"),
+    ({"mstar": '{ column = "M", unti = "Msun" }'}, r"'unti' at \[columns\.log_mstar\]\. Did you mean 'unit'"),
     ({"mstar": '{ column = "M", unit = "Mpc" }'}, r"columns\.log_mstar\.unit = 'Mpc' does not convert to 'Msun'"),
     ({"mstar": '{ column = "M", unit = "Msun/h2" }'}, r"the card does not say which: add h = 0\.7"),
     ({"mstar": '{ unit = "Msun" }'}, r"\[columns\.log_mstar\] lacks 'column'"),
@@ -282,8 +282,16 @@ def test_50mgc_native():
 
 
 def test_zcosmos_native():
-    rows = {"ID": [1, 2, 3, 4], "RA": [150.0] * 4, "Dec": [2.0] * 4, "z_spec": [0.5, 0.5, 0.5, 0.6], "Type": [0, 1, 0, 0],
-            "Mass": [1e10, 1e10, 1e10, 1e-41], "Flag": [1, 1, 0, 1], "m_I": [21.0] * 4}  # fmt: skip
+    rows = {
+        "ID": [1, 2, 3, 4],
+        "RA": [150.0] * 4,
+        "Dec": [2.0] * 4,
+        "z_spec": [0.5, 0.5, 0.5, 0.6],
+        "Type": [0, 1, 0, 0],
+        "Mass": [1e10, 1e10, 1e10, 1e-41],
+        "Flag": [1, 1, 0, 1],
+        "m_I": [21.0] * 4,
+    }
     got = read_galaxies(Table(rows), "zcosmos-bright")
     assert got.row.tolist() == ["zcosmos-bright:1", "zcosmos-bright:4"]
     assert got.log_mstar[0] == pytest.approx(10.0)
@@ -309,9 +317,9 @@ def test_kourkchi_tully_native(tmp_path):
     np.testing.assert_allclose(got.distance_err_mpc, [0.1576, 4.0, 4.0, 1.0])
     assert np.isnan(got.sigma_v_kms[1])
     # Tully et al. 2008 (ApJ 676, 184, from memory): V_LS = V_h - 26 cos l cos b + 317 sin l cos b - 8 sin b
-    l, b = np.radians(283.74), np.radians(74.49)  # galactic coordinates of RA 187.7, Dec 12.4
-    expected = 1242 - (-26 * np.cos(l) * np.cos(b) + 317 * np.sin(l) * np.cos(b) - 8 * np.sin(b))
-    assert got.z[0] * C_KM_S == pytest.approx(expected, abs=3.0)  # rounded coefficients
+    lon, lat = np.radians(283.74), np.radians(74.49)  # galactic coordinates of RA 187.7, Dec 12.4
+    sun = -26 * np.cos(lon) * np.cos(lat) + 317 * np.sin(lon) * np.cos(lat) - 8 * np.sin(lat)
+    assert got.z[0] * C_KM_S == pytest.approx(1242 - sun, abs=0.2)  # positions rounded to 0.01 degree and less
     assert set(got.mass_def) == {"vir"}
 
 

@@ -24,19 +24,19 @@ def along(ra, dec, apex_ra, apex_dec):
     return (unit(ra, dec) * unit(apex_ra, apex_dec)).sum(axis=-1)
 
 
-def galactic_to_icrs(l, b):
+def galactic_to_icrs(lon, lat):
     """By astropy, a road the package does not take."""
     from astropy.coordinates import SkyCoord
 
-    c = SkyCoord(l=l, b=b, unit="deg", frame="galactic").icrs
+    c = SkyCoord(l=lon, b=lat, unit="deg", frame="galactic").icrs
     return c.ra.deg, c.dec.deg
 
 
 def texts(path, delimiter=","):
     """Columns of a text table as lists of strings."""
-    opened = gzip.open(path, "rt") if path.suffix == ".gz" else open(path, newline="")
-    with opened as f:
-        rows = list(csv.reader(f, delimiter=delimiter))
+    data = path.read_bytes()
+    text = (gzip.decompress(data) if path.suffix == ".gz" else data).decode()
+    rows = list(csv.reader(text.splitlines(), delimiter=delimiter))
     head = [h.strip() for h in rows[0]]
     return {h: [r[k].strip() for r in rows[1:]] for k, h in enumerate(head)}
 
@@ -117,9 +117,7 @@ def test_2mpp(real, shared_data):
 
 
 def test_50mgc(real, shared_data):
-    v, d, d_err, m, m_err = fits_columns(
-        shared_data / "galaxies/50mgc.fits", "v_h", "bestdist", "bestdist_error", "logmass", "logmass_error"
-    )
+    v, d, m, m_err = fits_columns(shared_data / "galaxies/50mgc.fits", "v_h", "bestdist", "logmass", "logmass_error")
     assert len(v) == 15424
     assert np.isnan(v).sum() == 301
     assert np.isfinite(m).sum() == 11740
@@ -204,7 +202,7 @@ def test_mcxc(real, shared_data):
     np.testing.assert_allclose(got.log_mass, 14 + np.log10(m500), atol=1e-13)
     assert_same_histogram(got.log_mass, np.log10(m500 * 1e14), 11.8, 15.4, 0.2)
     assert_same_histogram(got.z, z, 0, 1.3, 0.05)
-    # h: with H0 = 70 and Om = 0.3, M500 = 500 rho_c(z) 4/3 pi R500^3 needs no further h (G = 4.30092e-9 Mpc km2/s2/Msun)
+    # h: with H0 = 70, Om = 0.3 and G = 4.30092e-9 Mpc km2/s2/Msun, M500 = 500 rho_c(z) 4/3 pi R500^3 needs no other h
     rho = 3 * (70.0**2 * (0.3 * (1 + z) ** 3 + 0.7)) / (8 * np.pi * 4.30092e-9)
     ratio = 10**got.log_mass / (500 * rho * 4 / 3 * np.pi * r500**3)
     assert np.median(ratio) == pytest.approx(1, abs=1e-3)

@@ -220,3 +220,58 @@ def test_unknown_card_names_the_cards(tmp_path):
         read_galaxies(f"2mmp:{path}")
     with pytest.raises(InputError, match=r"card 'mcxc' is for groups, not for galaxies"):
         read_galaxies(f"mcxc:{path}")
+
+
+def test_columns_that_are_no_list_of_numbers_are_left_out():
+    from astropy.coordinates import SkyCoord
+    from astropy.utils.masked import Masked
+
+    table = QTable(
+        {
+            "id": ["a", "b"],
+            "ra": [1.0, 2.0] * u.deg,
+            "dec": [1.0, 2.0] * u.deg,
+            "z": [0.1, 0.2],
+            "place": SkyCoord([1, 2], [3, 4], unit="deg"),
+            "flux": np.ones((2, 5)),
+            "distance_mpc": Masked([10.0, 20.0] * u.Mpc, mask=[False, True]),
+        }
+    )
+    got = read_galaxies(table)
+    assert got.distance_mpc.tolist() == [10.0, pytest.approx(np.nan, nan_ok=True)]
+    table = Table(galaxy_table(), units={"ra": "deg", "distance_mpc": "kpc"})
+    assert read_galaxies(table).distance_mpc[2] == pytest.approx(0.00076)
+    assert np.isnan(read_galaxies(table).distance_mpc[:2]).all()  # masks live through a unit
+
+
+@pytest.mark.parametrize(
+    "unit", ["dex", "dex(solMass)", "log(solMass)", "[Msun]", "log10(Msun)", "Msun", "solMass", ""]
+)
+def test_ways_to_write_the_unit_of_a_logarithm(tmp_path, unit):
+    path = tmp_path / "g.ecsv"
+    Table({"id": ["a"], "ra": [1.0], "dec": [1.0], "z": [0.1], "log_mstar": [10.5]}).write(path, format="ascii.ecsv")
+    if unit:
+        path.write_text(path.read_text().replace("{name: log_mstar,", f"{{name: log_mstar, unit: '{unit}',"))
+    assert read_galaxies(path).log_mstar[0] == 10.5
+
+
+def test_a_localisation_under_another_name_is_noticed():
+    got = read_bursts(Table({**BURSTS, "pos_major": [1.0, 2.0, 3.0]}))
+    assert got.notes == ("bursts: column 'pos_major' is not used. Did you mean 'loc_major_arcsec'?",)
+
+
+def test_windows_lines_quotes_and_a_byte_order_mark(tmp_path):
+    path = tmp_path / "g.csv"
+    path.write_bytes('\ufeffid,ra,dec,z\r\n"A, 1",1,2,0.1\r\n"say ""b""",3,4,0.2\r\n'.encode())
+    assert read_galaxies(path).row.tolist() == ["g:A, 1", 'g:say "b"']
+
+
+def test_a_frame_with_missing_cells_of_every_kind():
+    import pandas as pd
+
+    frame = pd.DataFrame(
+        {"id": ["a", None, "c"], "ra": [1, 2, 3], "dec": [1.0, 2.0, None], "z": pd.array([0.1, 0.2, None])}
+    )
+    got = read_galaxies(frame)
+    assert got.row.tolist() == ["galaxies:a"]
+    assert [(r.row, r.column, r.found) for r in got.refused] == [(2, "id", "nothing"), (3, "dec", "nothing")]

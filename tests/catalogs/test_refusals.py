@@ -89,9 +89,9 @@ def test_major_axis_smaller_than_minor():
 
 FILES = [  # kind, changed columns (None = left out), message
     ("galaxies", {"dec": None}, r"no column 'dec' for galaxies among id, ra, z\. Add it \(declination, ICRS, deg\)"),
-    ("galaxies", {"z": None, "zz": [0.1, 0.2]}, r"no column 'z'.*"),
-    ("galaxies", {"dec": None, "decl": [0.0, 1.0]}, r"Did you mean 'decl'\? Rename it, or read the file through a card"),
-    ("galaxies", {"log_mstar_h": [10.0, 10.0]}, r"'log_mstar_h' looks like a mass that carries h.*without|no h"),
+    ("galaxies", {"z": None, "zz": [0.1, 0.2]}, r"no column 'z'.* Did you mean 'zz'\?"),
+    ("galaxies", {"dec": None, "decl": [0.0, 1.0]}, r"Did you mean 'decl'\? Rename it, or read the file .* a card"),
+    ("galaxies", {"log_mstar_h": [10.0, 10.0]}, r"'log_mstar_h' looks like .* carries h\. Write log10 of .* no h"),
     ("groups", {"log_mass": None, "logM_h": [14.0, 13.0]}, r"'logM_h' looks like a mass that carries h.*'log_mass'"),
     ("groups", {"mass_def": None}, r"a mass without definition.*Add 'mass_def' with 200c, 500c, 200m, 180m or vir"),
     ("bursts", {"dm_host": [1.0, 2.0]}, r"'dm_host': rest or observed frame\? Name it 'dm_host_rest'.*'dm_host_obs'"),
@@ -130,8 +130,10 @@ def test_a_unit_that_does_not_convert(kind, column, values, message):
 
 @pytest.mark.parametrize(
     ("name", "carries"),
-    [("log_mass_h", True), ("logM_h", True), ("m200m_hinv", True), ("log_mstar_h-1", True), ("halo_mass_h70", True)]
-    + [("mag_h", False), ("M_H", False), ("match", False), ("mass", False), ("m_h", False)],
+    [
+        *[(name, True) for name in ("log_mass_h", "logM_h", "m200m_hinv", "log_mstar_h-1", "halo_mass_h70")],
+        *[(name, False) for name in ("mag_h", "M_H", "match", "mass", "m_h")],
+    ],
 )
 def test_names_of_masses_that_carry_h(name, carries):
     table = Table({**GROUPS, name: [1.0, 2.0]})
@@ -207,12 +209,12 @@ def test_a_file_cut_short(tmp_path, ending, keep):
         table.write(path, format={"fits": "fits", "parquet": "parquet", "vot": "votable"}[ending])
     data = path.read_bytes()
     path.write_bytes(data[: int(len(data) * keep)])
-    with pytest.raises(InputError, match="cannot be|does not begin"):
+    with pytest.raises(InputError, match=r"cannot be (read|opened)|does not begin"):
         read_galaxies(path)
 
 
 def test_folder_and_wrong_object(tmp_path):
     with pytest.raises(InputError, match="is a folder"):
         read_galaxies(tmp_path)
-    with pytest.raises(InputError, match="found a int. Give a path"):
+    with pytest.raises(InputError, match=r"found a int\. Give a path"):
         read_galaxies(3)

@@ -80,7 +80,7 @@ def _localisation(rows: Rows) -> tuple[np.ndarray, np.ndarray, np.ndarray, np.nd
     note = np.full(len(table), "", dtype=object)
     given = np.isfinite(major) | np.isfinite(minor)
     no_angle = given & np.isnan(angle) & (major != minor) & np.isfinite(major) & np.isfinite(minor)
-    circle = no_angle & ((major > minor) | (not table.bare))
+    circle = no_angle & ((major > minor) | (table.card.position.without_angle == "larger circle"))
     larger = np.fmax(major, minor)
     for i in np.flatnonzero(circle):
         note[i] = (

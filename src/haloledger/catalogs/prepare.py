@@ -130,10 +130,16 @@ def _unknown_names(raw: RawTable, kind: str, found: dict[str, str]) -> list[str]
     notes = []
     for native in raw.columns:
         if native not in found.values():
-            alike = near(native, free, 0.8)
+            alike = near(native, free, 0.8) or _shares_word(native, free)
             if alike:
                 notes.append(f"{raw.label}: column '{native}' is not used. Did you mean '{alike}'?")
     return notes
+
+
+def _shares_word(native: str, free: list[str]) -> str:
+    """A column of ours with a long word in common: 'pos_major' and 'loc_major_arcsec'."""
+    words = {w for w in native.lower().split("_") if len(w) > 4}
+    return next((ours for ours in free if words & set(ours.split("_"))), "")
 
 
 def _bare_factor(file: str, native: str, unit: str, spec: Field, values: np.ndarray) -> float:

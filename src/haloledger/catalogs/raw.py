@@ -64,23 +64,24 @@ class RawTable:
     label: str
     n: int
     columns: dict[str, RawColumn]
-    sha256: str = ""
 
 
 def from_astropy(table: Any, file: str, label: str) -> RawTable:
-    """RawTable of an astropy Table; columns with more than one value a row are left out."""
+    """RawTable of an astropy Table. Columns that are no plain list of cells (coordinates, vectors) are left out."""
     columns = {}
     for name in table.colnames:
-        col = table[name]
-        unit = getattr(col, "unit", None)
-        values = np.ma.asarray(getattr(col, "value", col) if unit is not None else col)
-        if values.ndim != 1:
+        column = table[name]
+        if not hasattr(column, "dtype") or getattr(column, "shape", ()) != (len(table),):
             continue
-        plain = np.asarray(values.data)
-        missing = np.ma.getmaskarray(values)
+        mask = np.broadcast_to(np.asarray(getattr(column, "mask", False), dtype=bool), (len(table),))
+        plain = column.unmasked if hasattr(column, "unmasked") else column
+        plain = np.asarray(getattr(plain, "data", plain) if not hasattr(plain, "to_value") else plain.value)
+        if plain.dtype.kind not in "fiubSUO":
+            continue
         if plain.dtype.kind == "O":
-            missing = missing | np.array([x is None for x in plain], dtype=bool)
-        columns[str(name)] = RawColumn(plain, np.asarray(missing), "" if unit is None else str(unit))
+            mask = mask | np.array([x is None for x in plain], dtype=bool)
+        unit = getattr(column, "unit", None)
+        columns[str(name)] = RawColumn(plain, mask, "" if unit is None else str(unit))
     return RawTable(file, label, len(table), columns)
 
 

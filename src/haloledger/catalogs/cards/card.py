@@ -109,9 +109,9 @@ class Magnitudes:
 
 @dataclass(frozen=True)
 class Position:
-    """[position]: burst tables; what to do where the axes differ and no angle is given."""
+    """[position]: burst tables; whether axes in the wrong order and without an angle mean a circle ("" = a mistake)."""
 
-    without_angle: str = "larger circle"
+    without_angle: str = ""
     source: str = ""
 
 
@@ -126,10 +126,9 @@ class Depth:
 
 @dataclass(frozen=True)
 class Footprint:
-    """[footprint]: where on the sky; `file` (a MOC or a polygon) where one is needed."""
+    """[footprint]: where on the sky, in words; a map is given to the audit beside the table."""
 
     text: str = ""
-    file: str = ""
 
 
 @dataclass(frozen=True)

@@ -30,7 +30,7 @@ _CHOICES: dict[tuple[str, str], tuple[str, ...]] = {
     ("mass", "taken_as"): ("", "likelihood", "posterior"),
     ("mass", "imf"): IMFS,
     ("proxy", "use"): ("", "sigma_v", "richness", "lx"),
-    ("position", "without_angle"): ("larger circle",),
+    ("position", "without_angle"): ("", "larger circle"),
     ("drop", "op"): OPERATORS,
 }
 

@@ -119,10 +119,11 @@ def _rest(card: Card) -> list[str]:
     if card.kind == "groups":
         source = f" ({card.centre.source})" if card.centre.source else ""
         lines.append(f"Centres: {card.centre.error_kpc:g} kpc on each axis{source}; precedence {card.precedence}.")
-    if card.kind == "bursts":
+    if card.position.without_angle:
         lines.append(f"Axes that differ without an angle: {card.position.without_angle} ({card.position.source}).")
     if card.depth.text:
-        lines.append(f"Depth: {card.depth.text}.")
+        number = f" ({card.depth.band} < {card.depth.limit:g})" if card.depth.band else ""
+        lines.append(f"Depth: {card.depth.text}{number}.")
     if card.footprint.text:
         lines.append(f"Footprint: {card.footprint.text}.")
     return lines
