@@ -2,7 +2,8 @@
 
 Groups. Rows are taken from heavy to light. A row inside the phase space of a heavier row of another catalogue is
     the same halo   where the masses are within 0.7 dex and the halo has no row of the same catalogue yet: then the row
-                    with the lowest `precedence`, then the earliest catalogue, gives centre and mass;
+                    with a measured distance within 50 Mpc, then the lowest `precedence`, then the earliest catalogue,
+                    gives centre and mass;
     a part of it    where it is lighter by more: a clump inside a cluster, which adds no halo.
 The rows of one catalogue are never compared with each other: it says itself that they are distinct.
 
@@ -15,7 +16,13 @@ from __future__ import annotations
 import numpy as np
 
 from haloledger.cosmos.background import Cosmos
-from haloledger.haloes.distances import SPEED_OF_LIGHT_KMS, by_distance, distance_error_share, point_redshift
+from haloledger.haloes.distances import (
+    SPEED_OF_LIGHT_KMS,
+    by_distance,
+    distance_error_share,
+    point_luminosity_distance_mpc,
+    point_redshift,
+)
 from haloledger.haloes.neighbours import Places, close_pairs, separation_rad
 from haloledger.haloes.phase_space import Extent, inside
 from haloledger.haloes.table import COLUMNS, Haloes, change, join, rows
@@ -35,8 +42,7 @@ def merge_groups(groups: Haloes, size: Extent) -> Haloes:
     crowds = _crowds(head)
     for h, members in crowds.items():
         peers = members[same[members]]
-        first = np.lexsort((groups.id[peers].astype(str), groups.catalogue[peers], groups.precedence[peers]))[0]
-        chosen[h] = peers[first]
+        chosen[h] = peers[_first(rows(groups, peers))]
     heads = np.flatnonzero(head == np.arange(len(groups)))
     merged = rows(groups, chosen[heads])
     columns = {name: getattr(merged, name).copy() for name in DESCRIBED}
@@ -44,6 +50,11 @@ def merge_groups(groups: Haloes, size: Extent) -> Haloes:
         if h in crowds:
             _describe(columns, k, groups, chosen[h], crowds[h], same)
     return rows_in_order(change(merged, **columns))
+
+
+def _first(peers: Haloes) -> int:
+    # within 50 Mpc distances rule: a row without one may be the core of a cluster that is much wider on the sky
+    return int(np.lexsort((peers.id.astype(str), peers.catalogue, peers.precedence, ~by_distance(peers)))[0])
 
 
 def _crowds(head: np.ndarray) -> dict[int, np.ndarray]:
@@ -105,7 +116,7 @@ def merge_galaxies(catalogues: list[Haloes], cosmos: Cosmos) -> Haloes:
     merged = catalogues[0]
     for extra in catalogues[1:]:
         i, j = _same_galaxies(merged, extra, cosmos)
-        merged = _absorb(merged, i, rows(extra, j))
+        merged = _absorb(merged, i, rows(extra, j), cosmos)
         rest = np.setdiff1d(np.arange(len(extra)), j)
         merged = join([merged, change(rows(extra, rest), notes=extra.notes)])
     return rows_in_order(merged)
@@ -118,6 +129,7 @@ def rows_in_order(haloes: Haloes) -> Haloes:
 
 def _same_galaxies(a: Haloes, b: Haloes, cosmos: Cosmos) -> tuple[np.ndarray, np.ndarray]:
     za = point_redshift(a, cosmos)
+    mpc_a, mpc_b = point_luminosity_distance_mpc(a, cosmos), point_luminosity_distance_mpc(b, cosmos)
     kpc_per_rad = cosmos.angular_distance_kpc(za)
     radius = np.maximum(np.radians(SAME_GALAXY_ARCSEC / 3600), SAME_GALAXY_KPC / kpc_per_rad)
     i, j = close_pairs(_window(a), _window(b), radius)
@@ -128,7 +140,7 @@ def _same_galaxies(a: Haloes, b: Haloes, cosmos: Cosmos) -> tuple[np.ndarray, np
     da, db = a.distance_mpc[i], b.distance_mpc[j]
     err = np.hypot(da * distance_error_share(a)[i], db * distance_error_share(b)[j])
     agree = (velocity < allowed) | (both & (np.abs(da - db) <= 2 * err))
-    step = np.abs(a.log_mstar[i] - b.log_mstar[j])
+    step = np.abs(a.log_mstar[i] - b.log_mstar[j] + 2 * np.log10(mpc_b[j] / mpc_a[i]))  # of their light, that is
     agree &= ~(step > SAME_GALAXY_DEX)
     apart = separation_rad(a.ra_deg[i], a.dec_deg[i], b.ra_deg[j], b.dec_deg[j])
     return _nearest_first(i[agree], j[agree], apart[agree])
@@ -153,8 +165,8 @@ def _nearest_first(i, j, apart) -> tuple[np.ndarray, np.ndarray]:
     return found[:, 0], found[:, 1]
 
 
-def _absorb(a: Haloes, i: np.ndarray, b: Haloes) -> Haloes:
-    """Rows i of a, each completed by its double in b."""
+def _absorb(a: Haloes, i: np.ndarray, b: Haloes, cosmos: Cosmos) -> Haloes:
+    """Rows i of a, each completed by its double in b; a mass from light follows a distance that is filled in."""
     columns = {name: getattr(a, name).copy() for name in COLUMNS}
     names = np.array([f"{x};{y}" for x, y in zip(a.source_rows[i], b.source_rows, strict=True)], dtype=object)
     columns["source_rows"][i] = names
@@ -168,4 +180,8 @@ def _absorb(a: Haloes, i: np.ndarray, b: Haloes) -> Haloes:
             columns[name][i[fill]] = getattr(b, name)[fill]
         notes[fill] = [f"{n}; {what} from {x}" for n, x in zip(notes[fill], b.id[fill], strict=True)]
     columns["note"][i] = notes
-    return change(a, **columns)
+    filled = change(a, **columns)
+    step = 2 * np.log10(point_luminosity_distance_mpc(filled, cosmos) / point_luminosity_distance_mpc(a, cosmos))
+    step = np.where(a.err_holds_z, 0.0, step)
+    value = a.value + np.where(a.mass_kind == "stellar", step, 0.0)
+    return change(filled, value=value, log_mstar=a.log_mstar + step)

@@ -1,7 +1,7 @@
 """Which galaxies a listed group holds: those its catalogue puts there, and those inside its projected phase space.
 
-Where both redshifts are sharp, errors below the velocity dispersion, a galaxy is inside or not. Else, as with
-photometric redshifts (within two errors), it is a member with the probability
+Where both redshifts are sharp, errors below 300 km/s or the velocity dispersion, a galaxy is inside or not. Else, as
+with photometric redshifts (within two errors), it is a member with the probability
 
     p / (1 - p) = delta x 2 sqrt(r200c^2 - R^2) H(z) / c x N(z_obs | z_group, err and dispersion)
 
@@ -18,6 +18,7 @@ from haloledger.haloes.distances import SPEED_OF_LIGHT_KMS
 from haloledger.haloes.phase_space import Extent, inside
 from haloledger.haloes.table import Haloes
 
+SHARP_KMS = 300.0
 HEAVIER_DEX = 0.7  # a galaxy heavier than a group by more is not its member, whatever the sky looks like
 
 
@@ -31,7 +32,7 @@ def member_probability(galaxies: Haloes, galaxy_size: Extent, groups: Haloes, si
     i, j = found.i[lighter], found.j[lighter]
     scale = SPEED_OF_LIGHT_KMS / (1 + size.z[i])
     err_kms = np.hypot(galaxies.z_err[j], groups.z_err[i]) * scale
-    sharp = (err_kms < size.sigma_v_kms[i]) & ~galaxies.photometric[j]
+    sharp = (err_kms < np.maximum(size.sigma_v_kms[i], SHARP_KMS)) & ~galaxies.photometric[j]
     odds = np.zeros(len(galaxies))
     apart_kms = (galaxies.z[j] - groups.z[i]) * scale
     np.add.at(odds, j, _odds(apart_kms, np.hypot(err_kms, size.sigma_v_kms[i]), found.radius[lighter], size, i, cosmos))

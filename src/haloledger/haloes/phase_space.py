@@ -19,6 +19,7 @@ from haloledger.haloes.table import Haloes
 
 N_SIGMA = 3.0  # of the velocity dispersion and the redshift errors, in quadrature
 N_SIGMA_DISTANCE = 2.0
+DISTANCE_SCALE = 0.07  # by which two catalogues' distance scales may differ; common practice
 N_SIGMA_PHOTOMETRIC = 2.0
 BLANK_KMS = 500.0  # a row without redshift of its own: distance and peculiar velocity say no more
 
@@ -84,5 +85,6 @@ def _distances_agree(haloes: Haloes, size: Extent, i, others: Haloes, other_exte
     both = by_distance(haloes)[i] & by_distance(others)[j]
     d1, d2 = haloes.distance_mpc[i], others.distance_mpc[j]
     err = np.hypot(d1 * distance_error_share(haloes)[i], d2 * distance_error_share(others)[j])
+    err = np.hypot(err, DISTANCE_SCALE * d1)
     agree = np.abs(d1 - d2) <= N_SIGMA_DISTANCE * err + size.r200c_kpc[i] / 1e3
     return ~both | agree
