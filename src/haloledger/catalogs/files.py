@@ -131,10 +131,10 @@ def _read_fits(data: bytes) -> Any:
         tables = [h for h in hdus if isinstance(h, fits.BinTableHDU | fits.TableHDU)]
         if not tables:
             raise ValueError("no table extension in it")
-        table = Table.read(tables[0])
-        if len(data) % 2880:
-            raise ValueError("the file ends inside a FITS block: it was cut short")
-        return table
+        where = tables[0].fileinfo()
+        if where["datLoc"] + tables[0].size > len(data):
+            raise ValueError("the file ends before its table does: it was cut short")
+        return Table.read(tables[0])
 
 
 def _read_parquet(data: bytes) -> Any:
