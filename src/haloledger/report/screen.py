@@ -21,7 +21,7 @@ from rich.text import Text
 
 from haloledger.report import text
 from haloledger.report.names import plain
-from haloledger.report.views import BUDGET, SightlineView, by_burst, localisation, views
+from haloledger.report.views import BUDGET, EntryView, SightlineView, by_burst, localisation, views
 
 MANY = 12  # more bursts than this get a line each
 TOP = 8  # entries shown a burst
@@ -94,8 +94,8 @@ class Cells:
         return max(map(len, [self.heading, *self.cells])) + 2
 
 
-def _grid(first: str, names: list[str], columns: list[Cells], width: int, total: bool = False, title: str = "") -> Table:
-    """Rows of a name and numbers. Numbers are never cut, names may be; the last row is a `total` under a line."""
+def _grid(first: str, names: list[str], columns: list[Cells], width: int, total: int | None = None, title: str = "") -> Table:
+    """Rows of a name and numbers. Numbers are never cut, names may be; row `total` stands under a line."""
     kept = list(columns)
     while sum(c.width for c in kept) + SHORTEST_NAME + 2 > width and any(c.spare for c in kept):
         kept.remove(max(kept, key=lambda c: c.spare))
@@ -105,7 +105,7 @@ def _grid(first: str, names: list[str], columns: list[Cells], width: int, total:
     for column in kept:
         grid.add_column(column.heading, justify="right", no_wrap=True, min_width=column.width - 2)
     for i, name in enumerate(names):
-        last = total and i == len(names) - 1
+        last = i == total
         if last:
             grid.add_section()
         grid.add_row(_words(name), *(_words(c.cells[i]) for c in kept), style="bold" if last else "")
@@ -131,35 +131,49 @@ def _page(ledgers: Any, models: list[SightlineView], width: int) -> list[Rendera
     if len(models) > 1:
         parts += [Text(), _indent(_models(models, width - 2))]
     parts += [Text(), _indent(_budget(view, width - 2)), Text(), _indent(_words(text.judged(view), "dim"))]
-    notes = dict.fromkeys(note for m in models for note in (m.note,) if note)
-    return parts + [_indent(_sentence(f"note: {note}")) for note in notes]
+    return parts + [_indent(_sentence(f"note: {note}")) for note in text.notes(models)]
 
 
 def _entries(view: SightlineView, width: int) -> RenderableType:
-    lines = text.with_dm(view)
-    if not lines:
+    lines, top, source = text.with_dm(view), text.worth_a_line(view, TOP), text.at_source(view)
+    if not lines + source:
         return _sentence(f"model {view.model}: no listed halo adds DM here ({view.n_haloes} in the ledger)")
-    top, rest = lines[:TOP], lines[TOP:]
+    rest = lines[len(top) :]
     total = view.terms["dm_foreground"]
-    names = [e.halo for e in top] + [f"{len(rest)} more"] * bool(rest) + ["sum of listed haloes"]
-    blank = [""] * (len(names) - len(top))
-    more_dm = [text.dm(sum(e.dm.mean for e in rest))] * bool(rest)
-    more_share = [text.percent(sum(e.share for e in rest))] * bool(rest)
-    columns = [
-        Cells("kind", [e.kind for e in top] + blank, spare=3),
-        Cells("z", [text.redshift(e.z, e.z_kind) for e in top] + blank),
-        Cells("log M200c", [text.mass(e.log_m200c) for e in top] + blank, spare=1),
-        Cells("b [kpc]", [text.length(e.impact_kpc.p50) for e in top] + blank, spare=4),
-        Cells("b/r200c", [text.number(e.impact_r200c, 2) for e in top] + blank),
-        Cells("in front", [text.percent(e.p_front) for e in top] + blank, spare=2),
-        Cells("DM mean", [text.dm(e.dm.mean) for e in top] + more_dm + [text.dm(total.mean)]),
-        Cells("16 to 84 %", [text.dm_range(e.dm) for e in top] + [""] * bool(rest) + [text.dm_range(total)]),
-        Cells("share", [text.percent(e.share) for e in top] + more_share + [""]),
-    ]
-    if all(e.p_front >= 0.995 for e in top):
-        columns.pop(5)
+    more = [_more(rest)] if rest else []
+    rows = [_entry(e) for e in top] + more
+    rows.append({"": "sum of listed haloes", "DM mean": text.dm(total.mean), "16 to 84 %": text.dm_range(total)})
+    rows += [{**_entry(e), "": f"{e.halo} (at the source, not in the sum)"} for e in source]
+    spare = {"kind": 3, "log M200c": 1, "b [kpc]": 5, "in front": 4, "crossed": 2}
+    headings = ["kind", "z", "log M200c", "b [kpc]", "b/r200c", "in front", "crossed", "DM mean", "16 to 84 %", "share"]
+    if all(e.p_front >= 0.995 for e in top + source):
+        headings.remove("in front")
+    columns = [Cells(h, [row.get(h, "") for row in rows], spare.get(h, 0)) for h in headings]
     title = f"model {view.model}: {text.number(view.n_crossed)} haloes crossed on average; DM in pc cm-3"
-    return _grid("halo", names, columns, width, total=True, title=title)
+    return _grid("halo", [row[""] for row in rows], columns, width, total=len(top + more), title=title)
+
+
+def _entry(e: EntryView) -> dict[str, str]:
+    """Cells of one halo by heading; "" is its name."""
+    return {
+        "": e.halo,
+        "kind": e.kind,
+        "z": text.redshift(e.z, e.z_kind),
+        "log M200c": text.mass(e.log_m200c),
+        "b [kpc]": text.length(e.impact_kpc.p50),
+        "b/r200c": text.number(e.impact_r200c, 2),
+        "in front": text.percent(e.p_front),
+        "crossed": text.percent(e.p_crossed),
+        "DM mean": text.dm(e.dm.mean),
+        "16 to 84 %": text.dm_range(e.dm),
+        "share": text.percent(e.share),
+    }
+
+
+def _more(rest: list[EntryView]) -> dict[str, str]:
+    """The haloes that are not shown one by one; of their sum only the mean can be had from entries."""
+    mean, share = sum(e.dm.mean for e in rest), sum(e.share for e in rest)
+    return {"": f"{len(rest)} more", "DM mean": text.dm(mean), "share": text.percent(share)}
 
 
 def _models(models: list[SightlineView], width: int) -> Table:
@@ -185,7 +199,7 @@ def _budget(view: SightlineView, width: int) -> Table:
         Cells("median", [text.dm(s.p50) for s in spreads] + ["", last[2]]),
     ]
     unknown = "" if left.known else " (needs a redshift)"
-    return _grid("budget", [*BUDGET.values(), "observed DM", f"left over{unknown}"], columns, width, total=True)
+    return _grid("budget", [*BUDGET.values(), "observed DM", f"left over{unknown}"], columns, width, total=len(BUDGET) + 1)
 
 
 def _many(bursts: dict[str, list[SightlineView]], width: int) -> Table:

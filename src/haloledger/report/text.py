@@ -93,6 +93,31 @@ def judged(view: SightlineView) -> str:
     return f"reach {percent(view.reach)}   controls {number(view.control_p, 3)}   verdict {verdict}"
 
 
+def notes(models: list[SightlineView]) -> list[str]:
+    """What the rows of one burst say, each thing once; with the model's name where it is not true of all models."""
+    said: dict[str, list[str]] = {}
+    for each in models:
+        for part in dict.fromkeys(p.strip().rstrip(".") for p in each.note.split(";")):
+            if part:
+                said.setdefault(part, []).append(each.model)
+    everywhere = [part for part, names in said.items() if len(names) == len(models)]
+    some = [f"{', '.join(names)}: {part}" for part, names in said.items() if len(names) < len(models)]
+    return (["; ".join(everywhere)] if everywhere else []) + some
+
+
 def with_dm(view: SightlineView) -> list[EntryView]:
-    """Entries that add DM in at least some draws, most first."""
-    return [e for e in view.entries if e.dm.mean > 0 or e.dm.p84 > 0]
+    """Foreground entries that add DM in at least some draws, most first."""
+    return [e for e in view.entries if e.dm.mean > 0 and not e.at_source]
+
+
+def at_source(view: SightlineView) -> list[EntryView]:
+    """Entries the burst sits in, outside the foreground sum."""
+    return [e for e in view.entries if e.at_source]
+
+
+def worth_a_line(view: SightlineView, most: int) -> list[EntryView]:
+    """Foreground entries that are shown one by one: the two largest, and up to `most` of 1 % of all haloes' DM or more."""
+    lines = with_dm(view)
+    floor = 0.01 * sum(e.dm.mean for e in lines + at_source(view))
+    large = sum(e.dm.mean >= floor for e in lines)
+    return lines[: min(max(large, 2), most)]

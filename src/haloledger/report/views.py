@@ -62,6 +62,11 @@ class EntryView:
     share: float
     note: str
 
+    @property
+    def at_source(self) -> bool:
+        """Whether the burst sits in this halo: it adds DM, but has no share of the foreground sum."""
+        return bool(self.dm.mean > 0 and not np.isfinite(self.share))
+
 
 @dataclass(frozen=True)
 class SightlineView:

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from typing import Any
 
+import numpy as np
 from matplotlib.cm import ScalarMappable
 from matplotlib.figure import Figure
 
@@ -31,12 +32,14 @@ WIDE_ARCMIN = 150.0  # a half-width from which the field is labelled in degrees
 def sightline_figure(ledgers: Any, burst: str, model: str | None = None, covered: Any = None) -> Figure:
     """Matplotlib figure of `burst` with `model` (None: the first one).
 
-    `covered(ra_deg, dec_deg) -> bool array`, if given, shades the sky that the catalogues do not cover.
+    `covered(ra_deg, dec_deg) -> bool array` shades the sky that the catalogues do not cover; by default what the
+    footprints of the ledgers say, if there are any.
     """
     chosen = view(ledgers, burst, model)
+    covered = covered or _covered_by(getattr(ledgers, "footprints", ()))
     others = [v for v in views(ledgers) if v.burst == burst and v.model != chosen.model]
     ellipse = localisation(ledgers, burst)
-    numbered = text.with_dm(chosen)[:SHOWN]
+    numbered = text.worth_a_line(chosen, SHOWN) + text.at_source(chosen)[:2]
     haloes = sky_haloes(chosen, numbered)
     norm = colour_norm(haloes)
     with styled():
@@ -74,8 +77,11 @@ def _sky_panel(figure: Figure, haloes: list[SkyHalo], ellipse, norm, covered) ->
     axes.text(1, 1.012, region, transform=axes.transAxes, ha="right", fontsize=8.5, color=BURST)
     for spine in axes.spines.values():
         spine.set_visible(True)
-    if any(h.dm > 0 for h in haloes):
+    if any(h.number for h in haloes):
         _colour_bar(figure, norm)
+    else:
+        nothing = "no listed halo adds DM here"
+        axes.text(0.5, 0.04, nothing, transform=axes.transAxes, ha="center", fontsize=10, color=DETAIL)
 
 
 def _colour_bar(figure: Figure, norm) -> None:
@@ -84,8 +90,15 @@ def _colour_bar(figure: Figure, norm) -> None:
     figure.colorbar(ScalarMappable(norm, dm_colours()), cax=axes, orientation="horizontal", ticks=ticks)
     axes.set_xticks(ticks, [f"{t:g}" for t in ticks])
     axes.minorticks_off()
-    axes.set_xlabel("mean DM of the halo [pc cm⁻³]; thin grey circles: near, but add nothing", fontsize=8.8)
+    axes.set_xlabel("mean DM of the halo [pc cm⁻³]; thin circles: near, little or nothing added", fontsize=8.8)
     axes.tick_params(labelsize=8)
+
+
+def _covered_by(footprints: Any):
+    """Test whether any of the footprints contains a place; None without footprints."""
+    if not footprints:
+        return None
+    return lambda ra, dec: np.any([f.contains(ra, dec) for f in footprints], axis=0)
 
 
 def _on_offsets(covered: Any, chosen):
@@ -98,8 +111,6 @@ def _on_offsets(covered: Any, chosen):
     centre = SkyCoord(chosen.ra, chosen.dec, unit="deg")
 
     def inside(east, north):
-        import numpy as np
-
         angle, sep = np.arctan2(east, north), np.hypot(east, north)
         at = centre.directional_offset_by(angle * u.rad, sep * u.arcmin)
         return covered(at.ra.deg, at.dec.deg)

@@ -62,11 +62,12 @@ def sky_haloes(view: SightlineView, numbered: list[EntryView]) -> list[SkyHalo]:
 
 
 def field_radius(haloes: list[SkyHalo], ellipse: tuple[float, float, float]) -> float:
-    """Half-width of the field [arcmin]: numbered haloes in full, and the localisation region."""
-    wanted = [1.06 * (h.sep + h.radius) for h in haloes if h.number]
+    """Half-width of the field [arcmin]: haloes that add 3 % or more in full, and the localisation region."""
+    floor = 0.03 * sum(h.dm for h in haloes)
+    wanted = [1.06 * (h.sep + h.radius) for h in haloes if h.number and h.dm >= floor]
     if not wanted:
         nearest = sorted(h.sep + h.radius for h in haloes)[:3]
-        wanted = [1.06 * n for n in nearest]
+        wanted = [5.0, *(1.06 * n for n in nearest)]
     if np.isfinite(ellipse[0]):
         wanted.append(2.5 * ellipse[0] / 60)
     return max([*wanted, 0.5])
@@ -79,10 +80,10 @@ def zoom_radius(haloes: list[SkyHalo], field: float) -> float | None:
 
 
 def colour_norm(haloes: list[SkyHalo]) -> LogNorm:
-    """Logarithmic colours over at most a factor of 300 in DM."""
-    values = [h.dm for h in haloes if h.dm > 0]
+    """Logarithmic colours over a factor of 20 to 300 in DM, as the numbered haloes need it."""
+    values = [h.dm for h in haloes if h.number and h.dm > 0]
     top = max(values, default=1.0)
-    return LogNorm(max(min(values, default=0.1), top / 300) * 0.9, top * 1.1)
+    return LogNorm(min(max(min(values, default=0.1), top / 300), top / 20) * 0.9, top * 1.1)
 
 
 def draw_sky(
@@ -106,10 +107,9 @@ def draw_sky(
     for h in sorted(haloes, key=lambda h: -h.radius):
         if h.sep - h.radius > 1.5 * radius:
             continue
-        crossed = h.dm > 0
-        colour = colours(norm(h.dm)) if crossed else QUIET
-        fill = (*colour[:3], 0.13) if crossed else "none"
-        line = 1.7 if crossed else 0.6
+        colour = colours(norm(h.dm)) if h.dm > 0 else QUIET
+        fill = (*colour[:3], 0.13) if h.number else "none"
+        line = 1.8 if h.number else 0.7
         axes.add_patch(Circle((h.x, h.y), h.radius, facecolor=fill, edgecolor=colour, linewidth=line, gid="boundary"))
     _localisation(axes, ellipse, radius, small)
     _numbers(axes, [h for h in haloes if not (zoom and h.sep + h.radius < zoom)], radius, colours, norm, small)
@@ -185,7 +185,7 @@ def emptiest_corner(haloes: list[SkyHalo], radius: float, size: float) -> tuple[
     hidden = {}
     for corner in ((1 - size, 0.0), (0.0, 0.0), (1 - size, 1 - size), (0.0, 1 - size)):
         count = 0.0
-        for h in (h for h in haloes if h.dm > 0):
+        for h in (h for h in haloes if h.number):
             x = np.append(h.x + h.radius * np.cos(turn), np.full(40, h.x))  # a centre weighs like half a circle
             y = np.append(h.y + h.radius * np.sin(turn), np.full(40, h.y))
             right, up = (radius - x) / (2 * radius), (y + radius) / (2 * radius)
