@@ -52,7 +52,7 @@ def halo_list(galaxies: list[Galaxies], groups: list[Groups], cosmos: Cosmos) ->
         merged_galaxies = merge_galaxies(galaxy_parts, cosmos)
         doubles = sum(map(len, galaxy_parts)) - len(merged_galaxies)
         if doubles:
-            notes.append(f"{doubles} galaxies are listed in more than one catalogue and count once.")
+            notes.append(f"Galaxies listed in more than one catalogue, counted once: {doubles}.")
     if merged_galaxies is not None and merged_groups is not None:
         merged_galaxies = _without_members(merged_galaxies, merged_groups, notes, cosmos)
     parts = [p for p in (merged_groups, merged_galaxies) if p is not None]
@@ -110,9 +110,8 @@ def _merge_groups(groups: Haloes, notes: list[str], cosmos: Cosmos) -> Haloes:
     size = extent(groups, point_mass(groups, cosmos), cosmos)
     merged = merge_groups(groups, size)
     if len(merged) < len(groups):
-        notes.append(
-            f"{len(groups) - len(merged)} rows name a halo, or a part of one, that another group catalogue lists."
-        )
+        gone = len(groups) - len(merged)
+        notes.append(f"Group rows that name a halo, or a part of one, of another catalogue: {gone}.")
     return change(merged, notes=groups.notes)
 
 
@@ -123,7 +122,7 @@ def _without_members(galaxies: Haloes, groups: Haloes, notes: list[str], cosmos:
     p = member_probability(galaxies, galaxy_size, groups, size, names, cosmos)
     own = np.flatnonzero(p < 1)
     if own.size < p.size:
-        notes.append(f"{p.size - own.size} galaxies are members of listed groups and add no halo of their own.")
+        notes.append(f"Galaxies that listed groups hold, without a halo of their own: {p.size - own.size}.")
     return change(rows(change(galaxies, p_member=p), own), notes=galaxies.notes)
 
 

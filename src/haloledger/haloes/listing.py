@@ -118,7 +118,5 @@ def _with_mass(haloes: Haloes, label: str, wanted: str) -> Haloes:
     lost = len(haloes) - len(kept)
     if not lost:
         return kept
-    note = (
-        f"{label}: {lost} rows have no mass that could be used and are left out. A row needs {wanted}, and a distance."
-    )
+    note = f"{label}: {lost} of {len(haloes)} rows left out: no usable mass. A row needs {wanted}, and a distance."
     return Haloes(**{**vars(kept), "notes": (note,)})

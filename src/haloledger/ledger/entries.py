@@ -14,11 +14,13 @@ from haloledger.ledger.kept import kept_factor
 LN10 = np.log(10.0)
 
 
-def halo_dm(crossing: Crossing, halo_ids: np.ndarray, model: Model, universe: Universe, cosmos: Cosmos) -> np.ndarray:
-    """Observer-frame DM draws [pc cm-3] of every halo; zero where it is not crossed.
+def halo_dm(
+    crossing: Crossing, halo_ids: np.ndarray, model: Model, universe: Universe, cosmos: Cosmos
+) -> np.ndarray:
+    """Observer-frame DM draws [pc cm-3] of every halo, (n_haloes, n_draws); zero where it is not crossed.
 
     DM = kept factor x shape factor x integral of n_e dl / (1 + z_halo), the integral between us and the burst and inside
-    the boundary. Shape (n_haloes, n_draws). Haloes the burst sits in are included: the caller keeps them out of the foreground sum.
+    the boundary. Haloes the burst sits in are included: the caller keeps them out of the foreground sum.
     """
     b = crossing.impact_r200c
     c200c = crossing.c200c(model.concentration, cosmos)

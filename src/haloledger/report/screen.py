@@ -58,10 +58,10 @@ def show(ledgers: Any, to: Console, folder: str | None = None) -> None:
     many = len(bursts) > MANY
     pages = [[_many(bursts, to.width)]] if many else [_page(ledgers, m, to.width) for m in bursts.values()]
     for parts in [*pages, _last_words(ledgers, folder, many)]:
-        _print(to, [*parts, Text()])
+        print_parts(to, [*parts, Text()])
 
 
-def _print(to: Console, parts: list[RenderableType]) -> None:
+def print_parts(to: Console, parts: list[RenderableType]) -> None:
     """Print the parts; in a pipe without the blanks that fill a terminal's lines."""
     if to.is_terminal:
         for part in parts:
@@ -77,7 +77,8 @@ def _words(value: object, style: str = "") -> Text:
     return Text(plain(value), style=style, no_wrap=True, overflow="ellipsis")
 
 
-def _sentence(value: object, style: str = "") -> Text:
+def sentence(value: object, style: str = "") -> Text:
+    """Text that may run over several lines."""
     return Text(plain(value), style=style)
 
 
@@ -94,28 +95,29 @@ class Cells:
         return max(map(len, [self.heading, *self.cells])) + 2
 
 
-def _grid(first: str, names: list[str], columns: list[Cells], width: int, total: int | None = None, title: str = "") -> Table:
+def grid(first: str, names: list[str], columns: list[Cells], width: int, total: int | None = None, title: str = "") -> Table:
     """Rows of a name and numbers. Numbers are never cut, names may be; row `total` stands under a line."""
     kept = list(columns)
     while sum(c.width for c in kept) + SHORTEST_NAME + 2 > width and any(c.spare for c in kept):
         kept.remove(max(kept, key=lambda c: c.spare))
-    grid = Table(box=_LINES, show_edge=False, pad_edge=False, padding=(0, 1, 0, 0), header_style="bold")
+    table = Table(box=_LINES, show_edge=False, pad_edge=False, padding=(0, 1, 0, 0), header_style="bold")
     room = max(width - sum(c.width for c in kept) - 2, 8)
-    grid.add_column(first, no_wrap=True, overflow="ellipsis", width=min(room, max(map(len, [first, *names]))))
+    table.add_column(first, no_wrap=True, overflow="ellipsis", width=min(room, max(map(len, [first, *names]))))
     for column in kept:
-        grid.add_column(column.heading, justify="right", no_wrap=True, min_width=column.width - 2)
+        table.add_column(column.heading, justify="right", no_wrap=True, min_width=column.width - 2)
     for i, name in enumerate(names):
         last = i == total
         if last:
-            grid.add_section()
-        grid.add_row(_words(name), *(_words(c.cells[i]) for c in kept), style="bold" if last else "")
+            table.add_section()
+        table.add_row(_words(name), *(_words(c.cells[i]) for c in kept), style="bold" if last else "")
     if title:
-        grid.title, grid.title_justify, grid.title_style = _words(title), "left", "italic"
-    return grid
+        table.title, table.title_justify, table.title_style = _words(title), "left", "italic"
+    return table
 
 
-def _indent(part: RenderableType) -> Padding:
-    return Padding(part, (0, 0, 0, 2))
+def indented(part: RenderableType, by: int = 2) -> Padding:
+    """The part moved to the right."""
+    return Padding(part, (0, 0, 0, by))
 
 
 def _page(ledgers: Any, models: list[SightlineView], width: int) -> list[RenderableType]:
@@ -123,21 +125,21 @@ def _page(ledgers: Any, models: list[SightlineView], width: int) -> list[Rendera
     view = models[0]
     parts: list[RenderableType] = [
         Rule(_words(view.burst, "bold"), align="left", characters="─"),
-        _indent(_words(text.source(view))),
-        _indent(_words(text.place(view, localisation(ledgers, view.burst)))),
+        indented(_words(text.source(view))),
+        indented(_words(text.place(view, localisation(ledgers, view.burst)))),
         Text(),
-        _indent(_entries(view, width - 2)),
+        indented(_entries(view, width - 2)),
     ]
     if len(models) > 1:
-        parts += [Text(), _indent(_models(models, width - 2))]
-    parts += [Text(), _indent(_budget(view, width - 2)), Text(), _indent(_words(text.judged(view), "dim"))]
-    return parts + [_indent(_sentence(f"note: {note}")) for note in text.notes(models)]
+        parts += [Text(), indented(_models(models, width - 2))]
+    parts += [Text(), indented(_budget(view, width - 2)), Text(), indented(_words(text.judged(view), "dim"))]
+    return parts + [indented(sentence(f"note: {note}")) for note in text.notes(models)]
 
 
 def _entries(view: SightlineView, width: int) -> RenderableType:
     lines, top, source = text.with_dm(view), text.worth_a_line(view, TOP), text.at_source(view)
     if not lines + source:
-        return _sentence(f"model {view.model}: no listed halo adds DM here ({view.n_haloes} in the ledger)")
+        return sentence(f"model {view.model}: no listed halo adds DM here ({view.n_haloes} in the ledger)")
     rest = lines[len(top) :]
     total = view.terms["dm_foreground"]
     more = [_more(rest)] if rest else []
@@ -150,7 +152,7 @@ def _entries(view: SightlineView, width: int) -> RenderableType:
         headings.remove("in front")
     columns = [Cells(h, [row.get(h, "") for row in rows], spare.get(h, 0)) for h in headings]
     title = f"model {view.model}: {text.number(view.n_crossed)} haloes crossed on average; DM in pc cm-3"
-    return _grid("halo", [row[""] for row in rows], columns, width, total=len(top + more), title=title)
+    return grid("halo", [row[""] for row in rows], columns, width, total=len(top + more), title=title)
 
 
 def _entry(e: EntryView) -> dict[str, str]:
@@ -185,7 +187,7 @@ def _models(models: list[SightlineView], width: int) -> Table:
         Cells("median", [text.dm(t.p50) for t in totals], spare=1),
         Cells("left over", [text.dm(m.terms["dm_after_all"].p50) for m in models]),
     ]
-    return _grid("sum of listed haloes, by model", [m.model for m in models], columns, width)
+    return grid("sum of listed haloes, by model", [m.model for m in models], columns, width)
 
 
 def _budget(view: SightlineView, width: int) -> Table:
@@ -199,7 +201,7 @@ def _budget(view: SightlineView, width: int) -> Table:
         Cells("median", [text.dm(s.p50) for s in spreads] + ["", last[2]]),
     ]
     unknown = "" if left.known else " (needs a redshift)"
-    return _grid("budget", [*BUDGET.values(), "observed DM", f"left over{unknown}"], columns, width, total=len(BUDGET) + 1)
+    return grid("budget", [*BUDGET.values(), "observed DM", f"left over{unknown}"], columns, width, total=len(BUDGET) + 1)
 
 
 def _many(bursts: dict[str, list[SightlineView]], width: int) -> Table:
@@ -221,7 +223,7 @@ def _many(bursts: dict[str, list[SightlineView]], width: int) -> Table:
     if all(len(models) == 1 for models in bursts.values()):
         columns.pop(5)
     title = f"model {first[0].model}; DM in pc cm-3, means of the draws; left over: median"
-    return _grid("burst", [view.burst for view in first], columns, width, title=title)
+    return grid("burst", [view.burst for view in first], columns, width, title=title)
 
 
 def _left_aligned(cells: list[str]) -> list[str]:
@@ -239,18 +241,18 @@ def _span(models: list[SightlineView]) -> str:
 
 
 def _last_words(ledgers: Any, folder: str | None, many: bool) -> list[RenderableType]:
-    parts: list[RenderableType] = [_sentence(f"note: {note}") for note in ledgers.notes]
+    parts: list[RenderableType] = [sentence(f"note: {note}") for note in ledgers.notes]
     if ledgers.refused:
-        parts.append(_sentence(f"{_counted(len(ledgers.refused), 'row')} refused:"))
+        parts.append(sentence(f"{_counted(len(ledgers.refused), 'row')} refused:"))
         for r in ledgers.refused[:5]:
             name = f" ({r.name})" if r.name else ""
-            parts.append(_indent(_sentence(f"{r.file} row {r.row}{name}: {r.column} is {r.found}. {r.advice}")))
+            parts.append(indented(sentence(f"{r.file} row {r.row}{name}: {r.column} is {r.found}. {r.advice}")))
         if len(ledgers.refused) > 5:
-            parts.append(_indent(_sentence(f"and {len(ledgers.refused) - 5} more, see the table refused")))
+            parts.append(indented(sentence(f"and {len(ledgers.refused) - 5} more, see the table refused")))
     if folder:
         what = "every halo of every burst is in the table entries there" if many else "all entries are there"
-        parts.append(_sentence(f"Files are in {folder}: {what}."))
-    return [*parts, _sentence(text.CAUTION, "italic dim")]
+        parts.append(sentence(f"Files are in {folder}: {what}."))
+    return [*parts, sentence(text.CAUTION, "italic dim")]
 
 
 def _counted(n: int, what: str) -> str:

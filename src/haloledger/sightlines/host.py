@@ -24,7 +24,7 @@ WIDEST_Z_ERR = 0.012
 def is_host(bursts: Bursts, i: int, haloes: Haloes, index: np.ndarray, cosmos: Cosmos) -> np.ndarray:
     """Rows of `index` that are the host galaxy of burst i (n_index,) bool: by host_id, or by position and redshift.
 
-    By position it is the nearest galaxy whose redshift agrees, at most LEAST_KPC or three sigma of the localisation away.
+    By position it is the nearest galaxy whose redshift agrees, within LEAST_KPC or three sigma of the localisation.
     """
     rows = haloes.source_rows[index]
     wanted = str(bursts.host[i])
