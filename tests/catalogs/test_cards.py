@@ -380,3 +380,12 @@ def test_localised_bursts_are_recognised(tmp_path):
     assert np.isnan(got.z[1])
     (refusal,) = got.refused  # with an angle given, a major axis below the minor stays a mistake
     assert refusal.name == "D"
+
+
+def test_a_native_table_without_its_card_is_told_which_fits(tmp_path):
+    rows = {"objname": ["a"], "ra": [1.0], "dec": [1.0], "v_h": [900.0], "bestdist": [9.0], "bestdist_error": [1.0]}
+    table = Table({**rows, "logmass": [9.0], "logmass_error": [0.2]})
+    with pytest.raises(InputError, match=r"no column 'id'.* The card '50mgc' fits these columns: 50mgc:FILE\."):
+        read_galaxies(table)
+    with pytest.raises(InputError, match=r"The card '50mgc' fits these columns \(it lists galaxies\)"):
+        read_groups(table)

@@ -79,7 +79,7 @@ def _prepared(source: Any, card: str | Path | Card | None, kind: str) -> Prepare
     if chosen is None:
         chosen, note = _recognised(raw, kind)
         if chosen is None:
-            return prepare_bare(raw, kind)
+            return _bare(raw, kind)
         out = prepare_card(raw, chosen)
         out.notes.insert(0, note)
         return out
@@ -120,6 +120,21 @@ def _in_memory(source: Any, kind: str) -> RawTable:
     raise InputError(
         f"{kind}: found a {type(source).__name__}. Give a path, CARD:FILE, an astropy Table or a pandas DataFrame."
     )
+
+
+def _bare(raw: RawTable, kind: str) -> Prepared:
+    """A table by our own names; where that fails and a card fits its columns, the message names the card."""
+    try:
+        return prepare_bare(raw, kind)
+    except InputError as fault:
+        for card in list_cards():
+            native = {name for column in card.columns.values() for name in column.names}
+            if native <= set(raw.columns):
+                what = "" if card.kind == kind else f" (it lists {card.kind})"
+                raise InputError(
+                    f"{fault} The card '{card.name}' fits these columns{what}: {card.name}:FILE."
+                ) from None
+        raise
 
 
 def _recognised(raw: RawTable, kind: str) -> tuple[Card | None, str]:
