@@ -18,7 +18,7 @@ def textbook(planck):
 
 
 HALO_SHARE = [(12.0, 95.94), (13.0, 54.93), (14.0, 16.05)]
-"""Least log M and mean halo DM to z = 0.5 for 0.75 of the baryons; colossus, Tinker 2008, computed apart from this code."""
+"""Least log M and mean halo DM to z = 0.5 for 0.75 of the baryons (Tinker 2008 by colossus, not by this code)."""
 
 
 @pytest.mark.parametrize(("least", "expected"), HALO_SHARE)
