@@ -13,7 +13,7 @@ from typing import Any, TextIO
 
 import numpy as np
 from rich import box
-from rich.console import Console, RenderableType
+from rich.console import Console, JustifyMethod, RenderableType
 from rich.padding import Padding
 from rich.rule import Rule
 from rich.table import Table
@@ -84,18 +84,21 @@ def sentence(value: object, style: str = "") -> Text:
 
 @dataclass(frozen=True)
 class Cells:
-    """A column of numbers; where the screen is narrow, columns with the highest `spare` go first, 0 never goes."""
+    """A column of numbers, or of words; on a narrow screen columns with the highest `spare` go first, 0 never goes."""
 
     heading: str
     cells: list[str]
     spare: int = 0
+    words: bool = False
 
     @property
     def width(self) -> int:
         return max(map(len, [self.heading, *self.cells])) + 2
 
 
-def grid(first: str, names: list[str], columns: list[Cells], width: int, total: int | None = None, title: str = "") -> Table:
+def grid(
+    first: str, names: list[str], columns: list[Cells], width: int, total: int | None = None, title: str = ""
+) -> Table:
     """Rows of a name and numbers. Numbers are never cut, names may be; row `total` stands under a line."""
     kept = list(columns)
     while sum(c.width for c in kept) + SHORTEST_NAME + 2 > width and any(c.spare for c in kept):
@@ -104,7 +107,8 @@ def grid(first: str, names: list[str], columns: list[Cells], width: int, total: 
     room = max(width - sum(c.width for c in kept) - 2, 8)
     table.add_column(first, no_wrap=True, overflow="ellipsis", width=min(room, max(map(len, [first, *names]))))
     for column in kept:
-        table.add_column(column.heading, justify="right", no_wrap=True, min_width=column.width - 2)
+        side: JustifyMethod = "left" if column.words else "right"
+        table.add_column(column.heading, justify=side, no_wrap=True, min_width=column.width - 2)
     for i, name in enumerate(names):
         last = i == total
         if last:
@@ -150,7 +154,7 @@ def _entries(view: SightlineView, width: int) -> RenderableType:
     headings = ["kind", "z", "log M200c", "b [kpc]", "b/r200c", "in front", "crossed", "DM mean", "16 to 84 %", "share"]
     if all(e.p_front >= 0.995 for e in top + source):
         headings.remove("in front")
-    columns = [Cells(h, [row.get(h, "") for row in rows], spare.get(h, 0)) for h in headings]
+    columns = [Cells(h, [row.get(h, "") for row in rows], spare.get(h, 0), words=h == "kind") for h in headings]
     title = f"model {view.model}: {text.number(view.n_crossed)} haloes crossed on average; DM in pc cm-3"
     return grid("halo", [row[""] for row in rows], columns, width, total=len(top + more), title=title)
 
@@ -201,7 +205,9 @@ def _budget(view: SightlineView, width: int) -> Table:
         Cells("median", [text.dm(s.p50) for s in spreads] + ["", last[2]]),
     ]
     unknown = "" if left.known else " (needs a redshift)"
-    return grid("budget", [*BUDGET.values(), "observed DM", f"left over{unknown}"], columns, width, total=len(BUDGET) + 1)
+    return grid(
+        "budget", [*BUDGET.values(), "observed DM", f"left over{unknown}"], columns, width, total=len(BUDGET) + 1
+    )
 
 
 def _many(bursts: dict[str, list[SightlineView]], width: int) -> Table:
@@ -217,18 +223,13 @@ def _many(bursts: dict[str, list[SightlineView]], width: int) -> Table:
         Cells("16 to 84 %", [text.dm_range(t) for t in totals]),
         Cells("all models", [_span(models) for models in bursts.values()], spare=2),
         Cells("left over", [text.dm(view.terms["dm_after_all"].p50) for view in first], spare=3),
-        Cells("largest halo", _left_aligned([_shortened(top[0].halo) if top else text.NONE for top in tops]), spare=1),
+        Cells("largest halo", [_shortened(top[0].halo) if top else text.NONE for top in tops], spare=1, words=True),
         Cells("share", [text.percent(top[0].share) if top else text.NONE for top in tops], spare=1),
     ]
     if all(len(models) == 1 for models in bursts.values()):
         columns.pop(5)
     title = f"model {first[0].model}; DM in pc cm-3, means of the draws; left over: median"
     return grid("burst", [view.burst for view in first], columns, width, title=title)
-
-
-def _left_aligned(cells: list[str]) -> list[str]:
-    longest = max(map(len, cells))
-    return [cell.ljust(longest) for cell in cells]
 
 
 def _shortened(name: str) -> str:

@@ -43,7 +43,11 @@ def bars(view: SightlineView, others: list[SightlineView], numbered: list[EntryV
 
 
 def _detail(e: EntryView) -> str:
-    parts = ["at the source" if e.at_source else e.kind, f"z {text.redshift(e.z, e.z_kind)}", f"log M {text.number(e.log_m200c.p50)}"]
+    parts = [
+        "at the source" if e.at_source else e.kind,
+        f"z {text.redshift(e.z, e.z_kind)}",
+        f"log M {text.number(e.log_m200c.p50)}",
+    ]
     parts.append(f"b {text.length(e.impact_kpc.p50)} kpc, {text.number(e.impact_r200c, 2)} r200c")
     if e.at_source:
         parts.append("not in the sum")

@@ -7,6 +7,7 @@ from typing import Any
 
 import numpy as np
 from matplotlib.figure import Figure
+from matplotlib.ticker import FuncFormatter
 
 from haloledger.report.figures.style import LINES, QUIET, STYLES, new_figure, short, styled
 
@@ -53,5 +54,7 @@ def _limits(axes) -> None:
     top = np.nanmax(values[np.isfinite(values)])
     low = np.nanmin(values[np.isfinite(values) & (values > 0)])
     axes.set_ylim(max(low * 0.7, top * 1e-5), top * 2)
+    for axis in (axes.xaxis, axes.yaxis):
+        axis.set_major_formatter(FuncFormatter(lambda value, _: f"{value:g}"))
     axes.grid(color="#ececec", linewidth=0.7)
     axes.set_axisbelow(True)
