@@ -63,6 +63,14 @@ def test_second_row_of_a_catalogue_is_not_the_same_halo(make_groups, planck):
     assert haloes.source_rows.tolist() == ["a:000000;b:000000", "b:000001"]
 
 
+def test_own_catalogue_keeps_a_clump_apart_though_another_makes_it_a_part(make_groups, planck):
+    # a lists cluster and clump as two haloes; b's clump, a part of a's cluster, must not pull a's clump in with it
+    ra, mass = np.array([187.7, 187.44]), np.array([14.6, 13.0])
+    a = make_groups("a", 2, ra_deg=ra, dec_deg=np.array([12.4, 11.9]), z=0.0042, log_mass=mass)
+    b = make_groups("b", 1, ra_deg=187.44, dec_deg=11.92, z=0.0042, log_mass=13.3)
+    assert halo_list([], [a, b], planck).source_rows.tolist() == ["a:000000;b:000000", "a:000001"]
+
+
 def test_same_place_other_redshift_is_another_halo(make_groups, planck):
     a = make_groups("a", 1, z=0.10, log_mass=14.5)
     b = make_groups("b", 1, z=0.16, log_mass=14.5)

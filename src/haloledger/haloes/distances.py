@@ -22,7 +22,8 @@ def by_distance(haloes) -> np.ndarray:
 
 
 def z_of_luminosity_distance(mpc, cosmos: Cosmos) -> np.ndarray:
-    """Redshift of the Hubble flow at a luminosity distance [Mpc]; good to two parts in 1e4 (the inverse is linear between nodes)."""
+    """Redshift of the Hubble flow at a luminosity distance [Mpc], to two parts in 1e4."""
+    # the inverse in `cosmos` is linear between nodes 3 Mpc apart
     z = cosmos.z_at_comoving_distance(mpc)
     for _ in range(3):
         z = cosmos.z_at_comoving_distance(np.asarray(mpc) / (1 + z))
