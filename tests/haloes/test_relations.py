@@ -98,6 +98,13 @@ def test_luminosities_give_back_catalogue_masses(shared_data):
     assert np.mean(np.abs(back - 1) < 0.01) > 0.98  # a few entries come from elsewhere
 
 
+def test_luminosity_of_one_cluster():
+    # MCXC J1230.7+1220: z 0.0036, M500 1.2092e14, L500 0.425069e44 erg/s (H0 = 70, Om = 0.3)
+    flat = Cosmos("flat70", FlatLambdaCDM(H0=70, Om0=0.3, Ob0=0.05))
+    log_l = load_relation("pratt2009").mean(np.log10(1.2092e14), 0.0036, flat)
+    assert 10**log_l == pytest.approx(0.425069, rel=1e-3)  # the mass is printed to 1e-4, the constant to 1e-3
+
+
 def test_kravtsov_in_other_definitions(planck):
     # the same paper's 500c column, with scatter: the relation carried to 500c by an NFW profile must follow it roughly
     p = {
