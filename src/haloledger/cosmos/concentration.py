@@ -9,7 +9,7 @@ from __future__ import annotations
 from functools import lru_cache
 
 import numpy as np
-from scipy.interpolate import RegularGridInterpolator
+from scipy.ndimage import map_coordinates
 
 from haloledger.cosmos.background import Cosmos, cosmology
 from haloledger.cosmos.colossus_link import colossus_cosmology
@@ -23,8 +23,9 @@ RELATIONS = {
     "duffy2008": ("duffy08", "Duffy et al. 2008, MNRAS 390, L64"),
     "diemer2019": ("diemer19", "Diemer & Joyce 2019, ApJ 871, 168"),
 }
-LOG_M = np.arange(8.0, 16.55, 0.1)
-Z = np.concatenate([np.arange(0, 1, 0.025), np.arange(1, 4.01, 0.05)])
+LOG_M_STEP, Z_STEP = 0.1, 0.02
+LOG_M = 8.0 + LOG_M_STEP * np.arange(86)
+Z = Z_STEP * np.arange(201)
 
 
 def concentration(relation: str | float, log_m200c, z, cosmos: Cosmos) -> np.ndarray:
@@ -34,17 +35,20 @@ def concentration(relation: str | float, log_m200c, z, cosmos: Cosmos) -> np.nda
     log_m200c log10 Msun, clamped to 8..16.5; z clamped to 0..4; the two broadcast
     Raises InputError for a relation that is not there.
     """
-    shape = np.broadcast_shapes(np.shape(log_m200c), np.shape(z))
     if isinstance(relation, int | float):
-        return np.full(shape, float(relation))
+        return np.full(np.broadcast_shapes(np.shape(log_m200c), np.shape(z)), float(relation))
     if relation not in RELATIONS:
         raise InputError(f"concentration '{relation}' is not known. Write one of {', '.join(RELATIONS)}, or a number.")
-    points = np.stack(np.broadcast_arrays(np.clip(log_m200c, LOG_M[0], LOG_M[-1]), np.clip(z, Z[0], Z[-1])), axis=-1)
-    return np.exp(_table(relation, cosmos.name)(points)).reshape(shape)
+    m, zz = np.broadcast_arrays(
+        (np.asarray(log_m200c, dtype=float) - LOG_M[0]) / LOG_M_STEP, (np.asarray(z, dtype=float) - Z[0]) / Z_STEP
+    )
+    place = np.stack([m.ravel(), zz.ravel()])
+    return np.exp(map_coordinates(_table(relation, cosmos.name), place, order=1, mode="nearest")).reshape(m.shape)
 
 
 @lru_cache(maxsize=8)
-def _table(relation: str, cosmology_name: str) -> RegularGridInterpolator:
+def _table(relation: str, cosmology_name: str) -> np.ndarray:
+    """ln c200c over (LOG_M, Z)."""
     from colossus.halo import concentration as library
 
     cosmos = cosmology(cosmology_name)
@@ -53,4 +57,4 @@ def _table(relation: str, cosmology_name: str) -> RegularGridInterpolator:
         rows = [
             library.concentration(10**LOG_M * cosmos.h, "200c", float(z), model=model, range_return=False) for z in Z
         ]
-    return RegularGridInterpolator((LOG_M, Z), np.log(np.array(rows).T))
+    return np.log(np.array(rows).T)

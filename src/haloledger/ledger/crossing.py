@@ -3,14 +3,15 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 
 from haloledger.cosmos.background import Cosmos
 from haloledger.cosmos.concentration import concentration
 from haloledger.engine.universe import Universe
-from haloledger.haloes.build import Haloes
 from haloledger.haloes.draws import draw_haloes
+from haloledger.haloes.table import HaloDraws, Haloes
 from haloledger.sightlines.draws import Sightline
 from haloledger.sightlines.geometry import impact_parameters
 
@@ -26,6 +27,7 @@ class Crossing:
     own           the row has a halo of its own in this draw
     behind_kpc    proper distance of the burst behind the closest approach; negative: the burst is in front of it
     ahead_kpc     proper distance from us to the closest approach
+    c200c         concentration, for the gas model's relation
     """
 
     index: np.ndarray
@@ -33,22 +35,18 @@ class Crossing:
     own: np.ndarray
     log_m200c: np.ndarray
     z: np.ndarray
-    log_c_offset: np.ndarray
     r200c_kpc: np.ndarray
     distance_kpc: np.ndarray
     impact_kpc: np.ndarray
     behind_kpc: np.ndarray
     ahead_kpc: np.ndarray
 
-    @property
+    c200c: np.ndarray
+
+    @cached_property
     def impact_r200c(self) -> np.ndarray:
         """Impact parameter over r200c."""
         return self.impact_kpc / self.r200c_kpc
-
-    def c200c(self, relation: str | float, cosmos: Cosmos) -> np.ndarray:
-        """Concentration draws; a relation that is a number holds without scatter."""
-        median = concentration(relation, self.log_m200c, self.z, cosmos)
-        return median * 10**self.log_c_offset if isinstance(relation, str) else median
 
 
 def cross(
@@ -81,19 +79,25 @@ def cross(
         own=draws.own,
         log_m200c=draws.log_m200c,
         z=draws.z,
-        log_c_offset=draws.log_c_offset,
         r200c_kpc=r200c_kpc,
         distance_kpc=draws.distance_kpc,
         impact_kpc=impact_kpc,
         behind_kpc=1e3 * gap_mpc / (1 + draws.z),
         ahead_kpc=ahead_kpc,
+        c200c=_concentration(draws, relation, cosmos),
     )
     if at_source.any():
-        _place_burst_inside(crossing, sightline, haloes, relation, universe, cosmos)
+        _place_burst_inside(crossing, sightline, haloes, universe)
     return crossing
 
 
-def _place_burst_inside(crossing, sightline, haloes, relation, universe, cosmos) -> None:
+def _concentration(draws: HaloDraws, relation: str | float, cosmos: Cosmos) -> np.ndarray:
+    median = concentration(relation, draws.log_m200c, draws.z, cosmos)
+    # a relation that is a number holds for every halo, without scatter
+    return median * 10**draws.log_c_offset if isinstance(relation, str) else median
+
+
+def _place_burst_inside(crossing: Crossing, sightline: Sightline, haloes: Haloes, universe: Universe) -> None:
     """Depth of the burst in a halo it sits in: drawn from an NFW density along the line, out to two r200c.
 
     A velocity difference says nothing about the order along the line inside one halo.
@@ -101,11 +105,10 @@ def _place_burst_inside(crossing, sightline, haloes, relation, universe, cosmos)
     rows = np.flatnonzero(crossing.at_source)
     names = [f"{sightline.burst}|{haloes.id[crossing.index[i]]}" for i in rows]
     wanted = universe.uniforms("depth", names)
-    c200c = crossing.c200c(relation, cosmos)
     depth = np.linspace(-2.0, 2.0, 161)
     for row, uniform in zip(rows, wanted, strict=True):
         radius = np.sqrt(crossing.impact_r200c[row][:, None] ** 2 + depth[None, :] ** 2 + 1e-4)
-        density = _nfw(radius, c200c[row][:, None])
+        density = _nfw(radius, crossing.c200c[row][:, None])
         share = np.cumsum(density, axis=1)
         share = (share - share[:, :1]) / (share[:, -1:] - share[:, :1])
         above = np.clip(np.argmax(share >= uniform[:, None], axis=1), 1, None)

@@ -23,14 +23,13 @@ def halo_dm(
     the boundary. Haloes the burst sits in are included: the caller keeps them out of the foreground sum.
     """
     b = crossing.impact_r200c
-    c200c = crossing.c200c(model.concentration, cosmos)
     table = projection(model, cosmos)
     half_kpc = np.sqrt(np.maximum(model.boundary_r200c**2 - b**2, 0)) * crossing.r200c_kpc
     inside = crossing.own & (half_kpc > 0) & (crossing.behind_kpc > -half_kpc) & (crossing.ahead_kpc > -half_kpc)
     cut = inside & ((crossing.behind_kpc < half_kpc) | (crossing.ahead_kpc < half_kpc))
     whole = inside & ~cut
     dm = np.zeros_like(b)
-    arguments = (b, crossing.log_m200c, crossing.z, c200c, crossing.r200c_kpc)
+    arguments = (b, crossing.log_m200c, crossing.z, crossing.c200c, crossing.r200c_kpc)
     dm[whole] = table.dm_rest(*(a[whole] for a in arguments))
     if cut.any():
         start = np.maximum(-crossing.ahead_kpc, -half_kpc)[cut] / crossing.r200c_kpc[cut]
