@@ -642,7 +642,7 @@ def dm_parts(i: int, role: Role, ra: float, dec: float, from_haloes: float) -> d
         "dm_mw_halo": MW_HALO,
         "dm_haloes": from_haloes,
         "dm_diffuse": (mean - mean_haloes(role.z)) * np.exp(spread * normal(90, len(ROLES))[i]),
-        "dm_host_obs": 75 * np.exp(0.5 * normal(91, len(ROLES))[i]) / (1 + role.z),
+        "dm_host_obs": 150 * np.exp(0.8 * normal(91, len(ROLES))[i]) / (1 + role.z),
     }
     return parts | {"dm": sum(parts.values()), "dm_cosmic_mean_z": mean}
 

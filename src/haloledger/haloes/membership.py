@@ -38,7 +38,9 @@ def member_probability(galaxies: Haloes, galaxy_size: Extent, groups: Haloes, si
     np.add.at(odds, j, _odds(apart_kms, np.hypot(err_kms, size.sigma_v_kms[i]), found.radius[lighter], size, i, cosmos))
     p = odds / (1 + odds)
     p[j[sharp]] = 1.0
-    p[np.isin(galaxies.listed_group.astype(str), list(group_rows))] = 1.0
+    # a galaxy table names its group as the group table does, with or without that table's label
+    names = [*group_rows, *(row.split(":", 1)[-1] for row in group_rows)]
+    p[np.isin(galaxies.listed_group.astype(str), names) & (galaxies.listed_group != "")] = 1.0
     return p
 
 

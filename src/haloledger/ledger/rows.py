@@ -10,6 +10,7 @@ from haloledger.ledger.budget import CIRCULAR, TERMS
 from haloledger.ledger.columns import STATISTICS
 from haloledger.ledger.crossing import Crossing
 from haloledger.ledger.shares import mean_shares, variance_shares
+from haloledger.reach.census import LOG_M_LEAST
 from haloledger.sightlines.draws import Sightline
 from haloledger.sightlines.geometry import separation_deg
 
@@ -121,6 +122,8 @@ def _entry_notes(i, h, model: Model, haloes: Haloes, crossing: Crossing) -> list
     z_outside = float(((crossing.z[i] < z_low) | (crossing.z[i] > z_high)).mean())
     if z_outside > 0.16:
         notes.append(f"outside the model's redshift range {z_low:g}-{z_high:g}")
+    if np.median(crossing.log_m200c[i]) < LOG_M_LEAST:
+        notes.append(f"lighter than 1e{LOG_M_LEAST:g} Msun: the diffuse term counts the gas of such haloes too")
     if crossing.at_source[i]:
         notes.append("the burst sits in this halo: outside the foreground sum, depth drawn")
     return notes
