@@ -71,21 +71,26 @@ def sightline(burst, model, ra, dec, z, dm, foreground, n_haloes, **more) -> dic
     return row | more
 
 
-def one_burst(burst: str, ra: float, dec: float, z: float, dm: float, models=MODELS, halo="survey:") -> tuple:
+def one_burst(burst: str, ra: float, dec: float, z: float, observed: float, models=MODELS, halo="survey:") -> tuple:
     """Sightline rows and entry rows of a burst behind a cluster, two galaxies and one halo that is only near."""
     sightlines, entries = [], []
     for i, model in enumerate(models):
         f = 1.0 - 0.35 * i
         sum_dm = (f * 160, f * 120, f * 200)
         more = {"note": "outside the footprint of the survey"} if i == 0 else {}
-        sightlines.append(sightline(burst, model, ra, dec, z, dm, sum_dm, 4, **more))
+        sightlines.append(sightline(burst, model, ra, dec, z, observed, sum_dm, 4, **more))
         at = {"centre": (ra, dec)}
-        entries += [
-            entry(burst, model, f"{halo}cluster 7", "group", 0.09, 14.3, 610, 1250, 6.2, 12.6, (f * 130, f * 98, f * 165), 0.81, **at),
-            entry(burst, model, f"{halo}1183", "galaxy", 0.18, 12.1, 78, 210, 0.44, 1.2, (f * 24, f * 15, f * 34), 0.15, angle=250, **at),
-            entry(burst, model, f"{halo}1207", "galaxy", 0.31, 11.6, 101, 150, 0.38, 0.56, (f * 6, 0.0, f * 9), 0.04, angle=140, z_kind="phot", p_front=0.64, **at),
-            entry(burst, model, f"{halo}1550", "galaxy", 0.05, 11.2, 420, 120, 7.2, 2.1, (0.0, 0.0, 0.0), 0.0, angle=310, **at),
-        ]  # fmt: skip
+        dm = {"cluster 7": (f * 130, f * 98, f * 165), "1183": (f * 24, f * 15, f * 34), "1207": (f * 6, 0.0, f * 9)}
+        phot = {"z_kind": "phot", "p_front": 0.64, "angle": 140.0}
+        haloes = [
+            ("cluster 7", "group", 0.09, 14.3, 610, 1250, 6.2, 12.6, 0.81, {}),
+            ("1183", "galaxy", 0.18, 12.1, 78, 210, 0.44, 1.2, 0.15, {"angle": 250.0}),
+            ("1207", "galaxy", 0.31, 11.6, 101, 150, 0.38, 0.56, 0.04, phot),
+            ("1550", "galaxy", 0.05, 11.2, 420, 120, 7.2, 2.1, 0.0, {"angle": 310.0}),
+        ]
+        for name, *numbers, share, extra in haloes:
+            values = (dm.get(name, (0.0, 0.0, 0.0)), share)
+            entries.append(entry(burst, model, f"{halo}{name}", *numbers, *values, **at, **extra))
         entries.append({"burst": burst, "model": model, "halo": "shared", "variance_share": 0.0})
     return sightlines, entries
 

@@ -147,7 +147,7 @@ def test_a_folder_that_is_not_ours_is_refused(ledgers, tmp_path):
 
 
 def test_unknown_format_lists_the_known_ones(ledgers, tmp_path):
-    with pytest.raises(InputError, match="No table format 'hdf5'. Write one of: ecsv, csv, fits, votable, parquet"):
+    with pytest.raises(InputError, match=r"No table format 'hdf5'\. Write one of: ecsv, csv, fits, votable, parquet"):
         write(ledgers, tmp_path / "out", "hdf5")
 
 

@@ -16,7 +16,8 @@ COMMANDS = {
 }
 
 ORIENTATION = f"""\
-haloledger {__version__}: which haloes lie in front of a fast radio burst, how much DM each adds, how far to trust the sum.
+haloledger {__version__}: which haloes lie in front of a fast radio burst, how much DM each adds,
+and how far to trust the sum.
 
   haloledger demo                 see it work on eight invented sightlines
   haloledger audit --help         the same for your bursts and catalogues

@@ -38,7 +38,7 @@ class LazyGroup(click.Group):
         with formatter.section("Commands"):
             formatter.write_dl([(name, text) for name, (_, text) in self.lazy.items()])
 
-    def main(self, args: Any = None, prog_name: str | None = None, **extra: Any) -> Any:
+    def main(self, args: Any = None, prog_name: str | None = None, **extra: Any) -> Any:  # type: ignore[override]
         """Run and leave with one of the exit statuses; see `haloledger.cli.guard`."""
         from haloledger.cli.guard import leave
 

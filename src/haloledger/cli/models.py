@@ -41,9 +41,7 @@ def command(model: str | None, plot: str | None, mass: tuple[float, ...], redshi
     marked where the model holds more than the stars leave.
     """
     if model is None and (plot or mass):
-        raise click.UsageError(
-            "--plot and --mass need a model. Write for example: haloledger models blended --plot a.png"
-        )
+        raise click.UsageError("--plot and --mass need a model. Write: haloledger models blended --plot a.png")
     from haloledger.cosmos.background import cosmology as named
     from haloledger.gas.inventory import inventory
     from haloledger.gas.models import load_model, model_names

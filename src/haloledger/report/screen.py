@@ -25,7 +25,7 @@ from haloledger.report.views import BUDGET, EntryView, SightlineView, by_burst, 
 
 MANY = 12  # more bursts than this get a line each
 TOP = 8  # entries shown a burst
-SHORTEST_NAME = 16  # a column of numbers goes before names get shorter than this
+SHORTEST_NAME = 22  # a column of numbers goes before names get shorter than this
 LONGEST_HALO = 28  # in the table of many bursts
 WIDTH_IN_A_PIPE = 120
 
@@ -101,7 +101,8 @@ def grid(
 ) -> Table:
     """Rows of a name and numbers. Numbers are never cut, names may be; row `total` stands under a line."""
     kept = list(columns)
-    while sum(c.width for c in kept) + SHORTEST_NAME + 2 > width and any(c.spare for c in kept):
+    name_width = min(max(map(len, names)), SHORTEST_NAME)
+    while sum(c.width for c in kept) + name_width + 2 > width and any(c.spare for c in kept):
         kept.remove(max(kept, key=lambda c: c.spare))
     table = Table(box=_LINES, show_edge=False, pad_edge=False, padding=(0, 1, 0, 0), header_style="bold")
     room = max(width - sum(c.width for c in kept) - 2, 8)
@@ -149,7 +150,7 @@ def _entries(view: SightlineView, width: int) -> RenderableType:
     more = [_more(rest)] if rest else []
     rows = [_entry(e) for e in top] + more
     rows.append({"": "sum of listed haloes", "DM mean": text.dm(total.mean), "16 to 84 %": text.dm_range(total)})
-    rows += [{**_entry(e), "": f"{e.halo} (at the source, not in the sum)"} for e in source]
+    rows += [_entry(e) | {"share": "at source"} for e in source]  # under the sum, to which it does not belong
     spare = {"kind": 3, "log M200c": 1, "b [kpc]": 5, "in front": 4, "crossed": 2}
     headings = ["kind", "z", "log M200c", "b [kpc]", "b/r200c", "in front", "crossed", "DM mean", "16 to 84 %", "share"]
     if all(e.p_front >= 0.995 for e in top + source):
@@ -204,10 +205,8 @@ def _budget(view: SightlineView, width: int) -> Table:
         Cells("16 to 84 %", [text.dm_range(s) for s in spreads] + ["", last[1]]),
         Cells("median", [text.dm(s.p50) for s in spreads] + ["", last[2]]),
     ]
-    unknown = "" if left.known else " (needs a redshift)"
-    return grid(
-        "budget", [*BUDGET.values(), "observed DM", f"left over{unknown}"], columns, width, total=len(BUDGET) + 1
-    )
+    names = [*BUDGET.values(), "observed DM", "left over" if left.known else "left over (needs a redshift)"]
+    return grid("budget", names, columns, width, total=len(names) - 1)
 
 
 def _many(bursts: dict[str, list[SightlineView]], width: int) -> Table:

@@ -116,7 +116,7 @@ def at_source(view: SightlineView) -> list[EntryView]:
 
 
 def worth_a_line(view: SightlineView, most: int) -> list[EntryView]:
-    """Foreground entries that are shown one by one: the two largest, and up to `most` of 1 % of all haloes' DM or more."""
+    """Foreground entries to show one by one: the two largest, and up to `most` with 1 % of all haloes' DM or more."""
     lines = with_dm(view)
     floor = 0.01 * sum(e.dm.mean for e in lines + at_source(view))
     large = sum(e.dm.mean >= floor for e in lines)

@@ -164,8 +164,8 @@ def _spread(columns: dict[str, list], name: str, i: int) -> Spread:
 
 def _sightline(columns: dict[str, list], i: int, entries: dict[tuple[str, str], list[EntryView]]) -> SightlineView:
     burst, model = columns["burst"][i], columns["model"][i]
-    numbers = {n: _number(columns, n, i) for n in ("ra", "dec", "z", "dm", "reach", "control_p")}
-    texts = {n: _text(columns, n, i) for n in ("verdict", "reasons", "note")}
+    cells: dict[str, Any] = {n: _number(columns, n, i) for n in ("ra", "dec", "z", "dm", "reach", "control_p")}
+    cells |= {n: _text(columns, n, i) for n in ("verdict", "reasons", "note")}
     haloes = _number(columns, "n_haloes", i)
     return SightlineView(
         burst=burst,
@@ -174,8 +174,7 @@ def _sightline(columns: dict[str, list], i: int, entries: dict[tuple[str, str], 
         n_crossed=_number(columns, "n_crossed_mean", i),
         terms={term: _spread(columns, term, i) for term in TERMS},
         entries=entries.get((burst, model), []),
-        **numbers,
-        **texts,
+        **cells,
     )
 
 
@@ -192,10 +191,11 @@ def _entries(table: Table) -> dict[tuple[str, str], list[EntryView]]:
 
 def _entry(columns: dict[str, list], i: int) -> EntryView:
     numbers = ("ra", "dec", "z", "impact_r200c", "sep_arcmin", "boundary_arcmin", "p_front", "p_crossed", "share")
+    cells: dict[str, Any] = {n: _number(columns, n, i) for n in numbers}
+    cells |= {n: _text(columns, n, i) for n in ("halo", "kind", "z_kind", "note")}
     return EntryView(
         log_m200c=_spread(columns, "log_m200c", i),
         impact_kpc=_spread(columns, "impact_kpc", i),
         dm=_spread(columns, "dm", i),
-        **{n: _number(columns, n, i) for n in numbers},
-        **{n: _text(columns, n, i) for n in ("halo", "kind", "z_kind", "note")},  # type: ignore[arg-type]
+        **cells,
     )

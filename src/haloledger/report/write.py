@@ -1,7 +1,7 @@
 """Ledgers into a folder: tables, draws, figures and `run.toml`, whole or not at all.
 
-Everything is written into a temporary folder beside the place it belongs and then renamed, file by file, `run.toml` last.
-A run that is interrupted or fails before that leaves the folder as it was.
+Everything is written into a temporary folder beside the place it belongs and then renamed, file by file, `run.toml`
+last. A run that is interrupted or fails before that leaves the folder as it was.
 """
 
 from __future__ import annotations
@@ -36,7 +36,7 @@ def write(
     """Write all files of a run into `folder` and return their paths.
 
     `table_format` is "ecsv", "csv", "fits", "votable" or "parquet"; with `figures` a PNG per sightline is added.
-    What an earlier run wrote and this one does not is removed. Raises InputError for a folder that holds something else.
+    What an earlier run wrote and this one does not is removed. InputError for a folder that holds something else.
     """
     tables.check_format(table_format)
     place = Path(folder)
@@ -57,8 +57,8 @@ def write(
         shutil.rmtree(work, ignore_errors=True)
 
 
-def earlier_files(place: Path) -> list[str]:
-    """Files an earlier run left in `place`, by its `run.toml`; InputError where the folder is not ours to write into."""
+def earlier_files(place: str | Path) -> list[str]:
+    """Files an earlier run left in `place`, by its `run.toml`; InputError for a folder that is not ours."""
     place = Path(place)
     if not place.exists():
         return []

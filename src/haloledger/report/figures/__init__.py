@@ -1,4 +1,4 @@
-"""Pictures: one a sightline, one a halo model. Matplotlib without a screen; imported only when a picture is asked for."""
+"""Pictures: one a sightline, one a halo model. Matplotlib without a screen, imported when a picture is asked for."""
 
 from haloledger.report.figures.model import model_figure
 from haloledger.report.figures.sightline import sightline_figure

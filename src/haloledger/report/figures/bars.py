@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 from matplotlib.axes import Axes
@@ -10,7 +11,6 @@ from matplotlib.axes import Axes
 from haloledger.report import text
 from haloledger.report.figures.style import DETAIL, FAINT, INK, QUIET, dm_colours, short
 from haloledger.report.views import EntryView, SightlineView, Spread
-
 
 HEIGHT = 0.4  # of a bar; the rest of a row is its label
 
@@ -74,10 +74,10 @@ def draw_bars(axes: Axes, rows: list[Bar]) -> None:
 
 def _labels(axes: Axes, i: int, row: Bar, top: float) -> None:
     weight = "bold" if row.strong else "normal"
-    above = {"xy": (0, i - HEIGHT / 2), "xytext": (2, 3), "textcoords": "offset points"}
+    above: dict[str, Any] = {"xy": (0, i - HEIGHT / 2), "xytext": (2, 3), "textcoords": "offset points"}
     label = axes.annotate(row.label, **above, va="baseline", fontsize=8.8, fontweight=weight)
     if row.detail:
-        beside = {"xy": (1, 0), "xycoords": label, "xytext": (8, 1), "textcoords": "offset points"}
+        beside: dict[str, Any] = {"xy": (1, 0), "xycoords": label, "xytext": (8, 1), "textcoords": "offset points"}
         axes.annotate(row.detail, **beside, va="bottom", fontsize=7.2, color=DETAIL)
     s = row.spread
     value = text.dm(s.mean) + (f"  ({text.dm_range(s)})" if np.isfinite(s.p16) else "")

@@ -1,4 +1,4 @@
-"""The budget as a staircase: each term starts where the last one ended; the observed DM is the line they have to reach."""
+"""The budget as a staircase: each term starts where the last one ended; the observed DM is the line to reach."""
 
 from __future__ import annotations
 

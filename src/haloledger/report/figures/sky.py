@@ -1,7 +1,7 @@
 """The sky around a burst: every halo's boundary to scale, coloured by DM, and the localisation region.
 
-Offsets are zenithal equidistant about the burst: separations from the burst are exact, so a circle holds the burst if and
-only if the line crosses that halo (at median mass and position).
+Offsets are zenithal equidistant about the burst: separations from the burst are exact, so a circle holds the burst if
+and only if the line crosses that halo (at median mass and position).
 """
 
 from __future__ import annotations
@@ -128,7 +128,7 @@ def _localisation(axes: Axes, ellipse: tuple[float, float, float], radius: float
     if to_scale:
         minor = minor if np.isfinite(minor) else major
         angle = angle if np.isfinite(angle) else 0.0
-        # Ellipse turns counter-clockwise from +x in data space; x grows to the left here, so east of north is 90 - angle
+        # an ellipse turns from +x, which is east here, towards +y, north; the position angle turns from north to east
         region = Ellipse(
             (0, 0), 2 * major / 60, 2 * minor / 60, angle=90 - angle, facecolor="none", edgecolor=BURST, linewidth=1.6,
             zorder=5, gid="localisation",

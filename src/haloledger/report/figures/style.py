@@ -24,7 +24,7 @@ STYLES = ("-", "--", "-.", ":", (0, (5, 1, 1, 1, 1, 1)), (0, (1, 1)), (0, (8, 3)
 
 PIXELS_PER_INCH = 110
 
-_RC = {
+_RC: dict[str, Any] = {
     "font.size": 10,
     "font.family": "DejaVu Sans",
     "axes.titlesize": 10.5,
@@ -45,7 +45,8 @@ def styled():
     """Context in which a picture is drawn: nothing of the user's own settings is changed or used."""
     import matplotlib
 
-    return rc_context({**matplotlib.rcParamsDefault, "backend": "agg", **_RC, "text.parse_math": False})
+    settings: Any = {**matplotlib.rcParamsDefault}
+    return rc_context(settings | _RC | {"backend": "agg", "text.parse_math": False})
 
 
 def dm_colours() -> Colormap:

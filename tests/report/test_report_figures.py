@@ -1,0 +1,168 @@
+"""Pictures: circles to scale, the ellipse turned the right way, names as data, files where they should be."""
+
+import numpy as np
+import pytest
+from astropy import units as u
+from astropy.coordinates import SkyCoord
+from matplotlib.patches import Circle
+from synthetic import ledgers as make
+
+from haloledger.errors import InputError
+from haloledger.report.figures import model_figure, save, sightline_figure
+from haloledger.report.figures.sky import emptiest_corner, offsets, sky_haloes
+from haloledger.report.views import view
+from haloledger.report.write import write
+
+
+def sky_axes(figure):
+    return next(a for a in figure.axes if a.get_gid() == "sky")
+
+
+def patches(axes, gid):
+    return [p for p in axes.patches if p.get_gid() == gid]
+
+
+def words(figure) -> str:
+    figure.canvas.draw()
+    return "\n".join(t.get_text() for t in figure.findobj(match=lambda a: hasattr(a, "get_text")))
+
+
+@pytest.mark.parametrize(("ra0", "dec0"), [(150.0, 20.0), (0.01, -60.0), (200.0, 89.5)])
+def test_offsets_keep_separation_and_direction(ra0, dec0):
+    rng = np.random.default_rng(3)
+    ra, dec = (ra0 + rng.uniform(-5, 5, 40)) % 360, np.clip(dec0 + rng.uniform(-5, 5, 40), -90, 90)
+    east, north = offsets(ra0, dec0, ra, dec)
+    centre, there = SkyCoord(ra0, dec0, unit="deg"), SkyCoord(ra, dec, unit="deg")
+    # two ways to the same angle, both in double precision
+    np.testing.assert_allclose(np.hypot(east, north), centre.separation(there).to_value(u.arcmin), rtol=1e-9)
+    angle = centre.position_angle(there).to_value(u.rad)
+    np.testing.assert_allclose(np.cos(np.arctan2(east, north) - angle), 1, atol=1e-12)
+
+
+def test_boundaries_are_circles_to_scale(ledgers):
+    axes = sky_axes(sightline_figure(ledgers, "FRB20990101A"))
+    circles = patches(axes, "boundary")
+    assert all(isinstance(c, Circle) for c in circles)
+    entries = ledgers.entries[(ledgers.entries["burst"] == "FRB20990101A") & (ledgers.entries["model"] == "blended")]
+    expected = sorted(float(e["boundary_arcmin"].unmasked.value) for e in entries if e["halo"] != "shared")
+    assert sorted(c.get_radius() for c in circles) == pytest.approx(expected)
+    assert axes.get_aspect() == 1  # arcmin in x are arcmin in y
+    left, right = axes.get_xlim()
+    assert left > right  # east is left
+    largest = max(circles, key=lambda c: c.get_radius())
+    assert np.hypot(*largest.center) == pytest.approx(6.2, abs=0.01)  # its separation in the table
+
+
+def test_a_circle_holds_the_burst_where_the_halo_is_crossed(ledgers):
+    each = view(ledgers, "FRB20990101A")
+    for halo, entry in zip(sky_haloes(each, each.entries), each.entries, strict=True):
+        assert (halo.sep < halo.radius) == (entry.dm.mean > 0)
+
+
+def test_localisation_is_to_scale_and_turned_east_of_north():
+    axes = sky_axes(sightline_figure(make(major=400.0, minor=150.0), "FRB20990101A"))
+    (ellipse,) = patches(axes, "localisation")
+    assert (ellipse.width, ellipse.height) == pytest.approx((2 * 400 / 60, 2 * 150 / 60))
+    end = ellipse.get_patch_transform().transform([(1.0, 0.0)])[0]  # end of the major axis: x is east, y is north
+    angle = np.degrees(np.arctan2(end[0], end[1])) % 180
+    assert angle == pytest.approx(30.0)  # position angle of the fixture
+
+
+def test_a_localisation_too_small_to_see_is_a_cross(ledgers):
+    figure = sightline_figure(ledgers, "FRB20990101A")
+    assert patches(sky_axes(figure), "localisation") == []
+    assert "cross: the burst, its region is smaller" in words(figure)
+
+
+def test_picture_says_what_the_tables_say(ledgers):
+    said = words(sightline_figure(ledgers, "FRB20990101A"))
+    for part in ("130  (98.0 to 165)", "160  (120 to 200)", "104  (78.0 to 130)", "observed 612", "139  (69.0 to 199)"):
+        assert part in said
+    second = words(sightline_figure(ledgers, "FRB20990202B", "strong-feedback"))
+    assert "no redshift given" in second
+    assert "sum, strong-feedback" in second
+    assert "nan" not in second
+
+
+def test_a_clean_sightline_has_a_picture(ledgers):
+    ledgers.entries = ledgers.entries[ledgers.entries["halo"] == "shared"]
+    assert "no listed halo adds DM here" in words(sightline_figure(ledgers, "FRB20990101A"))
+
+
+def test_footprint_of_the_ledgers_is_shaded(ledgers):
+    class East:
+        def contains(self, ra, dec):
+            return np.asarray(ra) > 150.0
+
+    bare = len(sky_axes(sightline_figure(ledgers, "FRB20990101A")).collections)
+    ledgers.footprints = [East()]
+    assert len(sky_axes(sightline_figure(ledgers, "FRB20990101A")).collections) > bare
+
+
+def test_second_view_goes_where_it_hides_least():
+    from haloledger.report.figures.sky import SkyHalo
+
+    for x, y in ((6, 6), (-6, 6), (6, -6), (-6, -6)):
+        halo = SkyHalo(x, y, 3.0, 10.0, 1)
+        right, up = emptiest_corner([halo], 10.0, 0.37)
+        hidden_x, hidden_y = 10 * (1 - 2 * (right + 0.185)), 10 * (2 * (up + 0.185) - 1)
+        assert np.hypot(hidden_x - x, hidden_y - y) > 10
+
+
+def test_names_in_pictures_are_not_mathematics():
+    hostile = make(names=("$\\frac{", "b\x1b[31m"), halo="$x^{")
+    said = words(sightline_figure(hostile, "$\\frac{"))
+    assert "$\\frac{" in said
+    assert "$x^{cluster 7" in said
+    assert "b?[31m" in words(sightline_figure(hostile, "b\x1b[31m"))
+
+
+def test_a_picture_per_burst_with_clean_names(tmp_path):
+    write(make(names=("../x", "a/b", "A b")), tmp_path / "out", figures=True)
+    assert sorted(p.name for p in (tmp_path / "out" / "figures").iterdir()) == ["A_b-2.png", "a_b.png", "x.png"]
+    assert [p.name for p in tmp_path.iterdir()] == ["out"]
+
+
+def test_pictures_are_wide_enough_and_the_same_each_time(ledgers, tmp_path):
+    from matplotlib.image import imread
+
+    paths = [save(sightline_figure(ledgers, "FRB20990101A"), tmp_path / f"{i}.png") for i in (1, 2)]
+    assert imread(paths[0]).shape[1] >= 1200
+    assert paths[0].read_bytes() == paths[1].read_bytes()
+
+
+def test_old_pictures_go_with_the_run_that_made_them(ledgers, tmp_path):
+    write(ledgers, tmp_path / "out", figures=True)
+    write(ledgers, tmp_path / "out")
+    assert not (tmp_path / "out" / "figures").exists()
+
+
+def test_other_suffixes_are_refused(ledgers, tmp_path):
+    with pytest.raises(InputError, match=r"a\.pdf: pictures are written as \.png or \.svg\. Write .*a\.png"):
+        save(sightline_figure(ledgers, "FRB20990101A"), tmp_path / "a.pdf")
+    with pytest.raises(InputError, match="cannot be written"):
+        save(sightline_figure(ledgers, "FRB20990101A"), tmp_path / "nowhere" / "a.png")
+
+
+def test_model_picture_shows_the_models_own_density(planck, tmp_path):
+    from haloledger.cosmos.concentration import concentration
+    from haloledger.gas.models import load_model
+
+    model = load_model("textbook-modified-nfw")
+    figure = model_figure(model, planck, masses=(12.0, 14.0), z=0.2)
+    density, dm = figure.axes
+    lines = [x for x in density.lines if x.get_label() in ("12", "14")]
+    assert len(lines) == 2
+    x, y = lines[1].get_data()
+    c200c = concentration(model.concentration, np.array([14.0]), np.array([0.2]), planck)
+    np.testing.assert_allclose(y, np.ravel(model.density_cm3(x, 14.0, 0.2, c200c, planck)), rtol=1e-12)
+    b, column = dm.lines[1].get_data()
+    # the line goes through the middle: twice the integral of the density outward from b, by the trapezium rule
+    r200c = float(planck.r200c_kpc(np.array([14.0]), np.array([0.2]))[0])
+    assert b[-1] == pytest.approx(r200c * model.boundary_r200c, rel=1e-6)
+    at = 150
+    depth = np.linspace(0, np.sqrt(r200c**2 - b[at] ** 2), 20001)
+    radius = np.hypot(b[at], depth) / r200c
+    n_e = np.ravel(model.density_cm3(np.minimum(radius, 1.0), 14.0, 0.2, c200c, planck))
+    assert column[at] == pytest.approx(2 * np.trapezoid(n_e, depth) * 1000, rel=1e-3)  # the table's own accuracy
+    assert save(figure, tmp_path / "m.svg").read_text().startswith("<?xml")
