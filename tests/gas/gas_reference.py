@@ -74,7 +74,7 @@ def _density(model: Model, cosmos, x, log_m, z, c) -> np.ndarray:
 
 
 def random_haloes(n: int, boundary: float, seed: int = 3):
-    """Impact parameter [r200c], log M200c, z, c200c; a sixth of the lines near the centre, a sixth near the boundary."""
+    """Impact parameter [r200c], log M200c, z, c200c; a sixth of the lines near the centre, a sixth near the edge."""
     rng = np.random.default_rng(seed)
     u = rng.random(n)
     u[: n // 6] = 10 ** rng.uniform(-5, -1, n // 6)

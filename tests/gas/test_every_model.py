@@ -168,7 +168,6 @@ def test_says_what_it_rests_on(model):
 def test_yardstick_has_no_spread():
     yardstick = load_model("textbook-modified-nfw")
     assert yardstick.spread_shared_dex == yardstick.spread_own_dex == 0
-    assert np.array_equal(yardstick.kept_factor([12.0, 15.0], 2.0, -1.0), [1.0, 1.0])
     assert np.array_equal(yardstick.shape_scatter_dex([0.0, 0.7]), [0.0, 0.0])
     assert (yardstick.boundary_r200c, yardstick.concentration) == (1.0, "dutton2014")
     assert yardstick.components[0].kept.kept == 0.75

@@ -8,7 +8,8 @@ import pytest
 from gas_reference import write_model
 
 from haloledger.gas.models import load_model
-from haloledger.gas.projection import projection
+from haloledger.gas.projection import DM_UNIT, projection
+from haloledger.gas.quadrature import along_line
 
 Z = 0.1
 IMPACTS = np.array([0.1, 0.3, 0.5, 1.0])
@@ -61,8 +62,7 @@ def models(tmp_path_factory):
         shape = load_model(full).components[0].shape
         triples = "\n".join(f"{k} = {list(getattr(shape, k))}" for k in ("amplitude", "sharpness", "outer"))
         body = f'[shape]\nkind = "gnfw-fit"\n{triples}\nscale = 0.5\ninner = -0.2\n'
-        for boundary in (1, 4):
-            found[f"{short} to {boundary}"] = write_model(folder, body, float(boundary), f"{short}-{boundary}")
+        found[f"{short} to 1"] = write_model(folder, body, 1.0, f"{short}-1")
     return found
 
 
@@ -72,6 +72,21 @@ def test_columns(halo, name, models, planck):
     r200c = planck.r200c_kpc(log_m, Z)
     got = projection(models[name], planck).dm_rest(IMPACTS, log_m, Z, c, r200c)
     assert got == pytest.approx(COLUMNS[halo][name], rel=TOLERANCE.get(name, 2e-4), abs=0)
+
+
+@pytest.mark.parametrize(
+    ("log_m", "expected"),
+    [
+        (12, [81.1415, 48.0153, 30.8376, 13.3048]),
+        (13, [257.8607, 138.3758, 83.3781, 32.4159]),
+        (14, [788.4717, 377.6162, 211.8645, 73.4987]),
+    ],
+)
+def test_agn_fit_without_a_boundary(log_m, expected, planck):
+    part = load_model("gnfw-agn-feedback").components[0]
+    column = 2 * along_line(lambda x: part.density(x, log_m, Z, 6.0, planck), IMPACTS, 1000.0)
+    amplitude = DM_UNIT * planck.baryon_share * 10**log_m / (4 * np.pi * planck.r200c_kpc(log_m, Z) ** 2)
+    assert amplitude * column == pytest.approx(expected, rel=2e-6)  # seven digits given
 
 
 @pytest.mark.parametrize(

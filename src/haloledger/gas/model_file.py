@@ -22,6 +22,7 @@ from haloledger.paths import data_folder
 CONCENTRATIONS = ("dutton2014", "duffy2008", "diemer2019")
 STATUSES = ("published", "scenario")
 PHASES = ("hot", "hot+cool")
+BOUNDARIES = (0.3, 3.0)  # r200c; two haloes of one mass share most of their gas beyond that
 REQUIRED = ("name", "summary", "status", "phases", "boundary", "concentration", "source", "validity")
 OPTIONAL = ("shape", "kept", "component", "handover", "spread", "notes")
 
@@ -61,7 +62,7 @@ def _read(path: Path, shown: str) -> Model:
 
 def _model(data: dict[str, Any], path: Path, shown: str, content: bytes) -> Model:
     _keys(data, REQUIRED, OPTIONAL, shown, "")
-    boundary = _number(data, "boundary", 0.3, 4.0, shown, "")
+    boundary = _number(data, "boundary", *BOUNDARIES, shown, "")
     validity = _table(data, "validity", shown)
     _keys(validity, ("log_m200c", "z"), (), shown, "validity.")
     components, handover = _components(data, boundary, path, shown)

@@ -117,13 +117,6 @@ class Model:
         """Scatter [dex] of one column against the mean at this impact parameter (triaxiality, clumps)."""
         return self.spread.shape_scatter(b_over_r200c)
 
-    def kept_factor(self, log_m200c, shared, own) -> np.ndarray:
-        """Factor on all gas of a halo in a draw: 10^(shared_dex(M) shared + own_dex(M) own).
-
-        shared, own  standard-normal numbers of the draw and of the halo (drawn by the caller)
-        """
-        return self.spread.factor(log_m200c, shared, own)
-
     def outside_validity(self, log_m200c, z) -> np.ndarray:
         """Where a halo lies outside the range the model's numbers were found for: flagged, not dropped."""
         log_m200c, z = np.asarray(log_m200c), np.asarray(z)

@@ -1,4 +1,4 @@
-"""How far a model lets the gas of one halo differ from its median. Declared here, drawn elsewhere."""
+"""How far a model lets the gas of one halo differ from its mean. Declared here, drawn elsewhere."""
 
 from __future__ import annotations
 
@@ -9,7 +9,7 @@ import numpy as np
 
 @dataclass(frozen=True)
 class Spread:
-    """Spreads in dex, log-normal about the model's median.
+    """Spreads in dex, each for a log-normal factor of mean 1, so that the gas of all haloes together stays the model's.
 
     log_m200c           masses at which shared_dex and own_dex are given; one value means the same at every mass
     shared_dex, own_dex spread of the kept fraction that all haloes of a draw share, and from halo to halo
@@ -30,12 +30,6 @@ class Spread:
     @property
     def largest_own(self) -> float:
         return max(self.own_dex)
-
-    def factor(self, log_m200c, shared, own) -> np.ndarray:
-        """10^(shared_dex(M) shared + own_dex(M) own) for standard-normal numbers `shared` and `own`."""
-        dex = np.interp(log_m200c, self.log_m200c, self.shared_dex) * shared
-        dex = dex + np.interp(log_m200c, self.log_m200c, self.own_dex) * own
-        return 10.0**dex
 
     def shape_scatter(self, b_over_r200c) -> np.ndarray:
         return np.interp(b_over_r200c, self.b_over_r200c, self.shape_scatter_dex)

@@ -17,8 +17,8 @@ LN10 = np.log(10.0)
 def halo_dm(crossing: Crossing, halo_ids: np.ndarray, model: Model, universe: Universe, cosmos: Cosmos) -> np.ndarray:
     """Observer-frame DM draws [pc cm-3] of every halo, (n_haloes, n_draws); zero where it is not crossed.
 
-    DM = kept factor x shape factor x integral of n_e dl / (1 + z_halo), the integral between us and the burst and inside
-    the boundary. Haloes the burst sits in are included: the caller keeps them out of the foreground sum.
+    DM = kept factor x shape factor x integral of n_e dl / (1 + z_halo), the integral between us and the burst and
+    inside the boundary. Haloes the burst sits in are included: the caller keeps them out of the foreground sum.
     """
     b = crossing.impact_r200c
     table = projection(model, cosmos)
