@@ -68,7 +68,7 @@ class Command(click.Command):
             record = parameter.get_help_record(ctx)
             if record:
                 sections.setdefault(getattr(parameter, "group", "Other"), []).append(record)
-        for name, records in sections.items():
+        for name, records in sorted(sections.items(), key=lambda item: item[0] == "Other"):  # --help last
             with formatter.section(name):
                 formatter.write_dl(records)
 
