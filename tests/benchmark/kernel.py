@@ -88,7 +88,7 @@ def main() -> None:
     joined = [np.concatenate([h[k] for h in haloes]) for k in range(5)]
     b, m, z, c, r = haloes[0]
 
-    kernel = best_of(lambda: textbook.dm_rest(*joined), 9) / joined[0].size
+    kernel = best_of(lambda: textbook.dm_rest(*joined), 25) / joined[0].size
     numpy_ = best_of(lambda: by_numpy(b, m, c, r, share), 9, 50) / N_DRAWS
     quad_ = best_of(lambda: [by_quad(*row, share) for row in zip(b[:50], m, c, r, strict=False)], 3) / 50
     drawing = best_of(lambda: draws_of_one_halo(rng, cosmos), 9, 20) / N_DRAWS

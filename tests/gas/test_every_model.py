@@ -108,6 +108,19 @@ def test_any_grouping_gives_the_same_bits(model, planck):
     assert np.array_equal(table.dm_rest(*(a[:400].reshape(20, 20) for a in args)), whole[:400].reshape(20, 20))
 
 
+def test_any_grouping_of_cut_lines_gives_the_same_bits(model, planck):
+    table = projection(model, planck)
+    args = random_haloes(700, model.boundary_r200c, seed=9)
+    args = (*args, planck.r200c_kpc(args[1], args[2]), np.full(700, -0.3), np.linspace(-0.2, 0.8, 700))
+    whole = table.dm_rest_between(*args)
+    order = np.random.default_rng(3).permutation(700)
+    assert np.array_equal(table.dm_rest_between(*(a[order] for a in args)), whole[order])
+    for size in (1, 3, 50):
+        pieces = [table.dm_rest_between(*(a[s : s + size] for a in args)) for s in range(0, 20 * size, size)]
+        joined = np.concatenate(pieces)[:700]
+        assert np.array_equal(joined, whole[: joined.size])
+
+
 def test_parts_of_a_line_add_up(model, planck):
     table = projection(model, planck)
     impact, log_m, z, c = random_haloes(300, model.boundary_r200c, seed=4)

@@ -105,15 +105,16 @@ def _fill(out, buffers: Buffers, terms, axes: dict[str, Axis], boundary: float, 
         np.copyto(scratch, r200c[part])
         scratch *= scratch
         edge /= scratch
-        np.multiply(total, edge, out=out[part])
+        total *= edge
+        np.copyto(out[part], total)
 
 
 def _edge(buffers: Buffers, impact, boundary: float, axis: Axis) -> np.ndarray:
     """sqrt(1 - u^2), and the place of sqrt(u) on its axis, both from the distance to the boundary, d = 1 - u."""
     wide, place, d, edge = buffers["wide"], buffers["u place"], buffers["scratch"], buffers["edge"]
-    np.multiply(impact, -1 / boundary, out=wide)
-    wide += 1.0  # in double precision: near the boundary nearly all digits cancel
+    np.subtract(boundary, impact, out=wide)  # in double precision: near the boundary nearly all digits cancel
     np.copyto(d, wide)
+    d *= F(1 / boundary)
     np.maximum(d, F(0), out=d)
     np.subtract(F(1), d, out=place)
     np.sqrt(place, out=place)
