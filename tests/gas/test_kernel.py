@@ -22,7 +22,7 @@ def test_look_up_is_multilinear(names):
     values = rng.normal(size=[a.size for a in axes.values()])
     n, boundary = 5000, 1.3
     given = {
-        "impact": boundary * rng.random(n),
+        "impact": boundary * rng.uniform(0.01, 1, n),
         "mass": rng.uniform(8.5, 16.5, n),  # beyond the grid too: the edge is taken
         "redshift": rng.uniform(0, 7, n),
         "concentration": rng.uniform(0.5, 60, n),
@@ -39,7 +39,9 @@ def test_look_up_is_multilinear(names):
     points = np.stack([np.clip(place[a], axes[a].low, axes[a].high) for a in names], axis=-1)
     ln_t = RegularGridInterpolator([a.points for a in axes.values()], values)(points)
     expected = np.exp(ln_t) * 10 ** given["mass"] * np.sqrt(1 - u**2) / r200c**2
-    assert got == pytest.approx(expected, rel=3e-5)  # single precision, over slopes of about 1 a cell
+    assert got == pytest.approx(
+        expected, rel=1e-4
+    )  # single precision, over slopes of up to 5 a cell; shipped tables have 0.1
 
 
 def test_terms_add_and_tables_of_a_term_multiply():
