@@ -146,23 +146,20 @@ def test_other_suffixes_are_refused(ledgers, tmp_path):
 
 def test_model_picture_shows_the_models_own_density(planck, tmp_path):
     from haloledger.cosmos.concentration import concentration
+    from haloledger.gas.curves import curves
     from haloledger.gas.models import load_model
 
     model = load_model("textbook-modified-nfw")
-    figure = model_figure(model, planck, masses=(12.0, 14.0), z=0.2)
+    figure = model_figure(curves(model, planck, (12.0, 14.0), 0.2))
     density, dm = figure.axes
-    lines = [x for x in density.lines if x.get_label() in ("12", "14")]
-    assert len(lines) == 2
-    x, y = lines[1].get_data()
-    c200c = concentration(model.concentration, np.array([14.0]), np.array([0.2]), planck)
-    np.testing.assert_allclose(y, np.ravel(model.density_cm3(x, 14.0, 0.2, c200c, planck)), rtol=1e-12)
+    x, y = next(line for line in density.lines if line.get_label() == "14").get_data()
+    c200c = concentration(model.concentration, np.array([14.0]), 0.2, planck)
+    np.testing.assert_allclose(y, model.density_cm3(x, 14.0, 0.2, c200c, planck), rtol=1e-12)
     b, column = dm.lines[1].get_data()
-    # the line goes through the middle: twice the integral of the density outward from b, by the trapezium rule
-    r200c = float(planck.r200c_kpc(np.array([14.0]), np.array([0.2]))[0])
+    r200c = float(planck.r200c_kpc(np.array([14.0]), 0.2)[0])
     assert b[-1] == pytest.approx(r200c * model.boundary_r200c, rel=1e-6)
-    at = 150
-    depth = np.linspace(0, np.sqrt(r200c**2 - b[at] ** 2), 20001)
-    radius = np.hypot(b[at], depth) / r200c
-    n_e = np.ravel(model.density_cm3(np.minimum(radius, 1.0), 14.0, 0.2, c200c, planck))
-    assert column[at] == pytest.approx(2 * np.trapezoid(n_e, depth) * 1000, rel=1e-3)  # the table's own accuracy
+    # twice the integral of the density from the middle of the line outward, by the trapezium rule
+    depth = np.linspace(0, np.sqrt(r200c**2 - b[150] ** 2), 20001)
+    n_e = model.density_cm3(np.minimum(np.hypot(b[150], depth) / r200c, 1.0), 14.0, 0.2, c200c, planck)
+    assert column[150] == pytest.approx(2 * np.trapezoid(n_e, depth) * 1000, rel=1e-3)  # the table's own accuracy
     assert save(figure, tmp_path / "m.svg").read_text().startswith("<?xml")

@@ -98,6 +98,7 @@ def _for_python(asked: dict[str, Any]) -> dict[str, Any]:
 def run(out: str | None, table_format: str, figures: bool, quiet: bool, verbose: int, asked: dict[str, Any]) -> int:
     """Audit, write, show; returns the exit status."""
     from haloledger.cli.talk import listen, progress_bar, say
+    from haloledger.report.text import counted
 
     listen(quiet, verbose)
     start = perf_counter()
@@ -113,5 +114,6 @@ def run(out: str | None, table_format: str, figures: bool, quiet: bool, verbose:
         from haloledger.report.screen import console, show
 
         show(ledgers, console(), out)
-    say(f"{len(ledgers.bursts)} bursts, {len(ledgers.models)} models: {perf_counter() - start:.1f} s", quiet)
+    n, m = len(ledgers.bursts), len(ledgers.models)
+    say(f"{counted(n, 'burst')}, {counted(m, 'model')}: {perf_counter() - start:.1f} s", quiet)
     return exit_codes.REFUSED if ledgers.refused else exit_codes.DONE

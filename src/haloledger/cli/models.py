@@ -12,6 +12,8 @@ haloledger models blended
 haloledger models blended --plot blended.svg --mass 12 --mass 14
 """
 
+FEW = (12.0, 13.5, 14.5)  # masses in the table of all models
+
 
 @click.command("models", cls=Command, example=EXAMPLE, context_settings={"help_option_names": ["-h", "--help"]})
 @click.argument("model", metavar="[NAME|FILE]", required=False)
@@ -45,12 +47,12 @@ def command(model: str | None, plot: str | None, mass: tuple[float, ...], redshi
     from haloledger.cosmos.background import cosmology as named
     from haloledger.gas.inventory import inventory
     from haloledger.gas.models import load_model, model_names
-    from haloledger.report.models_page import FEW, show_model, show_models
+    from haloledger.report.models_page import show_model, show_models
     from haloledger.report.screen import console
 
     cosmos = named(cosmology)
     if model is None:
-        show_models([inventory(load_model(n), cosmos, FEW, redshift) for n in model_names()], console())
+        show_models([inventory(load_model(n), cosmos, FEW, redshift) for n in model_names()], FEW, console())
         return
     chosen = load_model(model)
     show_model(inventory(chosen, cosmos, z=redshift), console())
@@ -60,8 +62,8 @@ def command(model: str | None, plot: str | None, mass: tuple[float, ...], redshi
 
 def _plot(model, cosmos, plot: str, mass: tuple[float, ...], redshift: float) -> None:
     from haloledger.cli.talk import say
+    from haloledger.gas.curves import LOG_M200C, curves
     from haloledger.report.figures import model_figure, save
-    from haloledger.report.figures.model import MASSES
 
-    path = save(model_figure(model, cosmos, mass or MASSES, redshift), plot)
+    path = save(model_figure(curves(model, cosmos, mass or LOG_M200C, redshift)), plot)
     say(f"Picture written: {path}")

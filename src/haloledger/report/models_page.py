@@ -1,4 +1,4 @@
-"""The halo models on screen: a table of all, or one explained."""
+"""The halo models on screen: a table of all, or one explained. Numbers come from `haloledger.gas.inventory`."""
 
 from __future__ import annotations
 
@@ -9,10 +9,8 @@ from rich.console import Console, RenderableType
 from rich.table import Table
 from rich.text import Text
 
-from haloledger.gas.inventory import RADII, Inventory
 from haloledger.report.screen import Cells, grid, indented, print_parts, sentence
 
-FEW = (12.0, 13.5, 14.5)  # masses in the table of all models
 OVER = "!"  # beside a kept fraction above what there is
 OUTSIDE = "*"  # beside a mass outside the model's validity
 _HEADS = ("name", "summary", "status", "phases", "notes", "source", "boundary", "concentration", "validity")
@@ -24,17 +22,17 @@ KEY = (
 )
 
 
-def show_models(inventories: Sequence[Inventory], to: Console) -> None:
-    """A line a model: status, boundary, kept fractions at a few masses, validity; then a sentence each."""
+def show_models(inventories: Sequence[Any], few: Sequence[float], to: Console) -> None:
+    """A line a model: status, boundary, kept fractions at the masses `few`, validity; then a sentence each."""
     names = [i.model.name for i in inventories]
     columns = [
         Cells("status", [i.model.status for i in inventories], words=True),
         Cells("edge/r200c", [f"{i.model.boundary_r200c:g}" for i in inventories]),
-        *(Cells(f"kept {log_m:g}", [_three(i, k) for i in inventories], words=True) for k, log_m in enumerate(FEW)),
+        *(Cells(f"kept {log_m:g}", [_three(i, k) for i in inventories], words=True) for k, log_m in enumerate(few)),
         Cells("log M200c", [_range(i.model.log_mass_range) for i in inventories], spare=2),
         Cells("z", [_range(i.model.z_range) for i in inventories], spare=3),
     ]
-    radii = f"kept fraction inside {', '.join(RADII)}, at log10 M200c {', '.join(f'{m:g}' for m in FEW)}"
+    radii = f"kept fraction inside {', '.join(inventories[0].kept)}, at log10 M200c {', '.join(f'{m:g}' for m in few)}"
     parts: list[RenderableType] = [grid("model", names, columns, to.width, title=radii), sentence(KEY, "dim"), Text()]
     for each in inventories:
         parts += [sentence(each.model.name, "bold"), indented(sentence(each.model.summary))]
@@ -42,7 +40,7 @@ def show_models(inventories: Sequence[Inventory], to: Console) -> None:
     print_parts(to, [*parts, Text(), sentence(hint, "dim")])
 
 
-def show_model(inventory: Inventory, to: Console) -> None:
+def show_model(inventory: Any, to: Console) -> None:
     """One model: what its file states, the kept fractions over mass, sources."""
     model = inventory.model
     head = {
@@ -65,21 +63,21 @@ def show_model(inventory: Inventory, to: Console) -> None:
     print_parts(to, parts)
 
 
-def _kept_table(inventory: Inventory, width: int) -> RenderableType:
+def _kept_table(inventory: Any, width: int) -> RenderableType:
     masses = [f"{m:.1f}{OUTSIDE if out else ''}" for m, out in zip(inventory.log_m200c, inventory.outside, strict=True)]
     columns = [Cells("c200c", [f"{c:.1f}" for c in inventory.c200c])]
-    columns += [Cells(r, [_one(inventory, r, k) for k in range(len(masses))]) for r in RADII]
+    columns += [Cells(r, [_one(inventory, r, k) for k in range(len(masses))]) for r in inventory.kept]
     columns.append(Cells("less stars", [f"{a:.3f}" for a in inventory.available]))
     return grid("log10 M200c", masses, columns, width, title=f"kept fraction, z = {inventory.z:g}")
 
 
-def _one(inventory: Inventory, radius: str, k: int) -> str:
+def _one(inventory: Any, radius: str, k: int) -> str:
     return f"{inventory.kept[radius][k]:.3f}{OVER if inventory.over[radius][k] else ' '}"
 
 
-def _three(inventory: Inventory, k: int) -> str:
+def _three(inventory: Any, k: int) -> str:
     """Kept fractions inside the three radii at mass k."""
-    parts = [f"{inventory.kept[r][k]:.2f}{OVER if inventory.over[r][k] else ''}" for r in RADII]
+    parts = [f"{inventory.kept[r][k]:.2f}{OVER if inventory.over[r][k] else ''}" for r in inventory.kept]
     return " ".join(parts) + (OUTSIDE if inventory.outside[k] else "")
 
 

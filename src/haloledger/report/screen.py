@@ -243,7 +243,7 @@ def _span(models: list[SightlineView]) -> str:
 def _last_words(ledgers: Any, folder: str | None, many: bool) -> list[RenderableType]:
     parts: list[RenderableType] = [sentence(f"note: {note}") for note in ledgers.notes]
     if ledgers.refused:
-        parts.append(sentence(f"{_counted(len(ledgers.refused), 'row')} refused:"))
+        parts.append(sentence(f"{text.counted(len(ledgers.refused), 'row')} refused:"))
         for r in ledgers.refused[:5]:
             name = f" ({r.name})" if r.name else ""
             parts.append(indented(sentence(f"{r.file} row {r.row}{name}: {r.column} is {r.found}. {r.advice}")))
@@ -253,7 +253,3 @@ def _last_words(ledgers: Any, folder: str | None, many: bool) -> list[Renderable
         what = "every halo of every burst is in the table entries there" if many else "all entries are there"
         parts.append(sentence(f"Files are in {folder}: {what}."))
     return [*parts, sentence(text.CAUTION, "italic dim")]
-
-
-def _counted(n: int, what: str) -> str:
-    return f"{n} {what}{'' if n == 1 else 's'}"

@@ -60,6 +60,11 @@ def length(value: float) -> str:
     return number(value, 0 if value >= 9.95 else 1)
 
 
+def counted(n: int, what: str) -> str:
+    """A number of things: 1 row, 3 rows."""
+    return f"{n} {what}{'' if n == 1 else 's'}"
+
+
 def angle(arcsec: float) -> str:
     """An angle in the unit a person would choose."""
     for unit, size in (("deg", 3600.0), ("arcmin", 60.0)):
