@@ -39,9 +39,7 @@ def test_look_up_is_multilinear(names):
     points = np.stack([np.clip(place[a], axes[a].low, axes[a].high) for a in names], axis=-1)
     ln_t = RegularGridInterpolator([a.points for a in axes.values()], values)(points)
     expected = np.exp(ln_t) * 10 ** given["mass"] * np.sqrt(1 - u**2) / r200c**2
-    assert got == pytest.approx(
-        expected, rel=1e-4
-    )  # single precision, over slopes of up to 5 a cell; shipped tables have 0.1
+    assert got == pytest.approx(expected, rel=1e-4)  # single precision, slopes of up to 5 a cell; shipped: 0.1
 
 
 def test_terms_add_and_tables_of_a_term_multiply():
