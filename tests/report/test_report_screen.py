@@ -78,7 +78,7 @@ def test_a_halo_the_burst_sits_in_stands_outside_the_sum(ledgers):
 def test_no_number_is_cut_at_any_width(ledgers, width):
     page = printed(ledgers, width)
     assert max(map(len, page.splitlines())) <= width
-    assert line(page, "survey:cluster")[-5:] == ["130", "98.0", "to", "165", "81%"]
+    assert line(page, "survey")[-5:] == ["130", "98.0", "to", "165", "81%"]
     assert line(page, "blended")[-1] == "134"
 
 

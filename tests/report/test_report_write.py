@@ -12,7 +12,7 @@ from synthetic import ledgers as make
 
 from haloledger.errors import InputError
 from haloledger.report import tables
-from haloledger.report.names import file_name, file_names, plain
+from haloledger.report.names import file_name, file_names, plain, shorten
 from haloledger.report.tables import SUFFIX
 from haloledger.report.write import write
 
@@ -189,6 +189,12 @@ def test_file_names_are_clean_and_different():
     assert file_name("...") == "unnamed"
     assert file_name("FRB 20220319D (host é)") == "FRB_20220319D_host_e"
     assert file_names(["a/b", "a b", "A_B"]) == {"a/b": "a_b", "a b": "a_b-2", "A_B": "A_B-3"}
+
+
+def test_long_names_keep_both_ends():
+    assert shorten("kourkchi-tully:700028630", 22) == "kourkchi-t…y:700028630"
+    assert shorten("short", 22) == "short"
+    assert [len(shorten("x" * 40, n)) for n in (8, 9, 40)] == [8, 9, 40]
 
 
 def test_plain_text_cannot_steer_a_terminal():

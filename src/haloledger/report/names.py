@@ -30,6 +30,15 @@ def file_names(texts: list[str]) -> dict[str, str]:
     return names
 
 
+def shorten(text: object, longest: int) -> str:
+    """`text` without control characters, cut in the middle: a catalogue's name and the end of an id both tell."""
+    clean = plain(text)
+    if len(clean) <= longest:
+        return clean
+    head = (longest - 1) // 2
+    return f"{clean[:head]}…{clean[len(clean) - (longest - 1 - head) :]}"
+
+
 def plain(text: object) -> str:
     """`text` on one line without control characters, so that a name cannot steer a terminal."""
     return "".join(c if c.isprintable() else "?" for c in str(text))

@@ -20,7 +20,7 @@ from rich.table import Table
 from rich.text import Text
 
 from haloledger.report import text
-from haloledger.report.names import plain
+from haloledger.report.names import plain, shorten
 from haloledger.report.views import BUDGET, EntryView, SightlineView, by_burst, localisation, views
 
 MANY = 12  # more bursts than this get a line each
@@ -106,7 +106,8 @@ def grid(
         kept.remove(max(kept, key=lambda c: c.spare))
     table = Table(box=_LINES, show_edge=False, pad_edge=False, padding=(0, 1, 0, 0), header_style="bold")
     room = max(width - sum(c.width for c in kept) - 2, 8)
-    table.add_column(first, no_wrap=True, overflow="ellipsis", width=min(room, max(map(len, [first, *names]))))
+    room = min(room, max(map(len, [first, *names])))
+    table.add_column(shorten(first, room), no_wrap=True, width=room)
     for column in kept:
         side: JustifyMethod = "left" if column.words else "right"
         table.add_column(column.heading, justify=side, no_wrap=True, min_width=column.width - 2)
@@ -114,7 +115,7 @@ def grid(
         last = i == total
         if last:
             table.add_section()
-        table.add_row(_words(name), *(_words(c.cells[i]) for c in kept), style="bold" if last else "")
+        table.add_row(_words(shorten(name, room)), *(_words(c.cells[i]) for c in kept), style="bold" if last else "")
     if title:
         table.title, table.title_justify, table.title_style = _words(title), "left", "italic"
     return table
@@ -214,6 +215,7 @@ def _many(bursts: dict[str, list[SightlineView]], width: int) -> Table:
     first = [models[0] for models in bursts.values()]
     totals = [view.terms["dm_foreground"] for view in first]
     tops = [text.with_dm(view)[:1] for view in first]
+    largest = [shorten(top[0].halo, LONGEST_HALO) if top else text.NONE for top in tops]
     columns = [
         Cells("z", [text.number(view.z, 4) for view in first]),
         Cells("DM", [text.dm(view.dm) for view in first], spare=4),
@@ -222,17 +224,18 @@ def _many(bursts: dict[str, list[SightlineView]], width: int) -> Table:
         Cells("16 to 84 %", [text.dm_range(t) for t in totals]),
         Cells("all models", [_span(models) for models in bursts.values()], spare=2),
         Cells("left over", [text.dm(view.terms["dm_after_all"].p50) for view in first], spare=3),
-        Cells("largest halo", [_shortened(top[0].halo) if top else text.NONE for top in tops], spare=1, words=True),
+        Cells(
+            "largest halo",
+            largest,
+            spare=1,
+            words=True,
+        ),
         Cells("share", [text.percent(top[0].share) if top else text.NONE for top in tops], spare=1),
     ]
     if all(len(models) == 1 for models in bursts.values()):
         columns.pop(5)
     title = f"model {first[0].model}; DM in pc cm-3, means of the draws; left over: median"
     return grid("burst", [view.burst for view in first], columns, width, title=title)
-
-
-def _shortened(name: str) -> str:
-    return name if len(name) <= LONGEST_HALO else name[: LONGEST_HALO - 1] + "…"
 
 
 def _span(models: list[SightlineView]) -> str:

@@ -42,9 +42,10 @@ def percent(value: float) -> str:
 
 
 def redshift(value: float, kind: str = "") -> str:
-    """A redshift with its kind where that is not a spectrum."""
+    """A redshift, with "phot" where it is photometric and "dist" where a distance rules."""
     text = number(value, 4)
-    return f"{text} {kind}" if kind in ("phot", "distance") and text != NONE else text
+    said = {"phot": " phot", "distance": " dist"}.get(kind, "")
+    return text if text == NONE else text + said
 
 
 def mass(spread: Spread) -> str:

@@ -15,6 +15,7 @@ from matplotlib.colors import LogNorm
 from matplotlib.patches import Circle, Ellipse, Rectangle
 from matplotlib.ticker import FuncFormatter, MultipleLocator
 
+from haloledger.report import text
 from haloledger.report.figures.style import BURST, FAINT, INK, QUIET, dm_colours
 from haloledger.report.views import EntryView, SightlineView
 
@@ -209,14 +210,17 @@ def second_view(
     inset = axes.inset_axes((corner[0] + 0.012, corner[1] + 0.012, size - 0.024, size - 0.024), zorder=8)
     draw_sky(inset, haloes, ellipse, zoom, norm, small=True)
     inset.set(xticks=[], yticks=[])
-    inset.text(0.04, 0.955, f"middle, {2 * zoom:.2g} arcmin wide", transform=inset.transAxes, fontsize=7.5, va="top")
+    inset.text(
+        0.04, 0.955, f"middle, {text.angle(2 * zoom * 60)} wide", transform=inset.transAxes, fontsize=7.5, va="top"
+    )
     for spine in inset.spines.values():
         spine.set_visible(True)
         spine.set_color(INK)
     outline = Rectangle((-zoom, -zoom), 2 * zoom, 2 * zoom, facecolor="none", edgecolor=INK, linewidth=0.8, zorder=4)
     axes.add_patch(outline)
     centre = (radius * (1 - 2 * (corner[0] + size / 2)), radius * (2 * (corner[1] + size / 2) - 1))
-    axes.plot([0, centre[0]], [0, centre[1]], color=INK, linewidth=0.7, zorder=4)
+    x, y = np.sign(centre[0]) * zoom, np.sign(centre[1]) * zoom
+    axes.plot([x, centre[0]], [y, centre[1]], color=INK, linewidth=0.7, zorder=4)
 
 
 def in_degrees(axes: Axes) -> None:

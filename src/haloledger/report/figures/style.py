@@ -11,7 +11,7 @@ from matplotlib.colors import Colormap, ListedColormap
 from matplotlib.figure import Figure
 
 from haloledger.errors import InputError
-from haloledger.report.names import plain
+from haloledger.report.names import shorten
 
 INK = "#1b1b1b"
 QUIET = "#8a8a8a"
@@ -63,8 +63,7 @@ def new_figure(width: float, height: float) -> Figure:
 
 def short(name: str, longest: int = 30) -> str:
     """A name that fits a label, without control characters."""
-    clean = plain(name)
-    return clean if len(clean) <= longest else clean[: longest - 1] + "…"
+    return shorten(name, longest)
 
 
 def save(figure: Any, path: Path | str) -> Path:
