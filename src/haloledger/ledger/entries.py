@@ -32,7 +32,8 @@ def halo_dm(crossing: Crossing, halo_ids: np.ndarray, model: Model, universe: Un
     if cut.any():
         start = np.maximum(-crossing.ahead_kpc, -half_kpc)[cut] / crossing.r200c_kpc[cut]
         stop = np.minimum(crossing.behind_kpc, half_kpc)[cut] / crossing.r200c_kpc[cut]
-        dm[cut] = table.dm_rest_between(*(a[cut] for a in arguments), start, stop)
+        impact, log_m, z, c200c, r200c = (a[cut] for a in arguments)
+        dm[cut] = table.dm_rest_between(impact, log_m, z, c200c, r200c, start, stop)
     factor = kept_factor(crossing.log_m200c, halo_ids, model, universe, cosmos) * _shape_factor(
         b, halo_ids, model, universe
     )

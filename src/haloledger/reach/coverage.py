@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import numpy as np
 
-
 UNDETERMINED = "reach not determined, unlisted haloes drawn between none and the whole average"
 
 
