@@ -146,6 +146,7 @@ def _gather(ledgers: list[Ledger], inputs: Inputs, haloes: Haloes, gas: list[Mod
         refused=refused,
         run=run,
         notes=list(dict.fromkeys(notes)),
+        footprints=inputs.footprints,
         draws=term_draws_frame(ledgers),
         entry_draws=entry_draws_frame(ledgers),
     )

@@ -32,6 +32,7 @@ class Ledgers:
     refused: list[Refusal]
     run: dict
     notes: list[str] = field(default_factory=list)
+    footprints: list = field(default_factory=list)  # as given, for the pictures
     draws: Any = None
     entry_draws: Any = None
 
