@@ -1,0 +1,182 @@
+"""From a few numbers to a whole true sky."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from haloledger.cosmos.background import Cosmos
+from haloledger.cosmos.mass_function import mass_function
+from haloledger.rehearse.sky import columns, relations
+from haloledger.rehearse.sky.galaxies import amplitude, make_galaxies
+from haloledger.rehearse.sky.matter import make_box
+from haloledger.rehearse.sky.placing import class_bias, place_haloes
+from haloledger.rehearse.sky.structure import (
+    CONCENTRATION_DEX,
+    LIGHT_KMS,
+    PECULIAR_KMS,
+    median_concentration,
+    nfw_radius,
+)
+from haloledger.rehearse.sky.truth import Galaxies, Haloes, Lines, Sky, join, pick
+
+Z_BOX = 0.2
+NEAREST_Z = 0.03  # tubes of neighbouring lines do not meet beyond it
+
+
+@dataclass(frozen=True)
+class Truth:
+    """What the sky is made of."""
+
+    lines: int = 2000
+    z_range: tuple[float, float] = (0.1, 0.4)  # of the bursts
+    behind: float = 0.02  # how far behind the bursts the tubes reach, in redshift
+    satellite_share: float = 0.28  # of galaxies of 1e10 Msun
+    scatter_factor: float = 1.0  # times the published scatter of stellar mass at fixed halo mass
+    relation: str = ""  # one of relations.NAMES for all lines; "" draws one a line
+    zero_point_dex: float = 0.1
+    one_universe: bool = False  # all lines share one draw of the nuisances
+    host_is_satellite: float = 0.25
+    cells: int = 256
+    cell_mpc: float = 3.0
+
+
+def simulate(truth: Truth, seed: int, cosmos: Cosmos) -> Sky:
+    """The sky of one seed."""
+    draw = _Streams(seed)
+    n = truth.lines
+    z = draw("lines").uniform(*truth.z_range, n)
+    relation, zero, kept = _nuisances(truth, draw("nuisances"))
+    box = make_box(class_bias(Z_BOX, cosmos), Z_BOX, cosmos, draw("box"), truth.cells, truth.cell_mpc)
+    first = np.full(n, cosmos.comoving_distance_mpc(NEAREST_Z))
+    last = cosmos.comoving_distance_mpc(z + truth.behind)
+    placed = place_haloes(box, first, last, cosmos, draw("haloes"))
+    del box
+    field = _haloes(placed, cosmos, draw("structure"))
+    hosts, offset = _hosts(z, truth, cosmos, draw("hosts"))
+    haloes = join([hosts, field])  # halo i holds the burst of line i
+    subhaloes = amplitude(truth.satellite_share, Z_BOX, cosmos)
+    galaxies = make_galaxies(
+        haloes, relation[haloes.line], None, subhaloes, truth.scatter_factor, cosmos, draw("galaxies")
+    )
+    host_row = np.arange(n)
+    galaxies, host_row = _satellite_hosts(galaxies, offset, haloes, host_row, draw("host orbits"))
+    ra, dec = spread_on_sky(n)
+    lines = Lines(ra, dec, z, galaxies.z_seen[host_row], relation, zero, kept, host_row)
+    return Sky(lines, haloes, galaxies, true_columns(haloes, z, cosmos))
+
+
+class _Streams:
+    """Independent random numbers for each part, so that one part's change leaves the others' numbers."""
+
+    def __init__(self, seed: int) -> None:
+        self.seed = seed
+
+    def __call__(self, part: str) -> np.random.Generator:
+        return np.random.default_rng([self.seed, *part.encode()])
+
+
+def _nuisances(truth: Truth, rng: np.random.Generator):
+    n = truth.lines
+    relation = rng.integers(0, len(relations.NAMES), n)
+    zero, kept = truth.zero_point_dex * rng.standard_normal(n), rng.standard_normal(n)
+    if truth.one_universe:
+        relation, zero, kept = (np.full(n, a[0]) for a in (relation, zero, kept))
+    if truth.relation:
+        relation = np.full(n, relations.NAMES.index(truth.relation))
+    return relation, zero, kept
+
+
+def _haloes(placed, cosmos: Cosmos, rng: np.random.Generator) -> Haloes:
+    n = len(placed.line)
+    z = cosmos.z_at_comoving_distance(placed.distance_mpc)
+    c200c = median_concentration(placed.log_m200c, z, cosmos) * 10 ** (CONCENTRATION_DEX * rng.standard_normal(n))
+    return Haloes(
+        line=placed.line,
+        log_m200c=placed.log_m200c,
+        z=z,
+        z_seen=(1 + z) * (1 + PECULIAR_KMS / LIGHT_KMS * rng.standard_normal(n)) - 1,
+        east_mpc=placed.east_mpc,
+        north_mpc=placed.north_mpc,
+        c200c=c200c,
+        holds_burst=np.zeros(n, dtype=bool),
+    )
+
+
+def _hosts(z, truth: Truth, cosmos: Cosmos, rng: np.random.Generator) -> tuple[Haloes, np.ndarray]:
+    """The halo of each burst, and whether the host is a satellite of it.
+
+    Centrals: haloes weighted by the stellar mass of their central; satellites: haloes above 1e12.5 weighted by mass.
+    """
+    n = len(z)
+    m = np.arange(11.0, 15.3, 0.01)
+    number = mass_function(m[None], np.full((1, 1), float(np.mean(z))), cosmos)[0]
+    by_light = number * 10 ** relations.moster2013(m, float(np.mean(z)))
+    by_mass = number * 10**m * (m > 12.5)
+    satellite = rng.random(n) < truth.host_is_satellite
+    u = rng.random(n)
+    log_m = np.where(satellite, _inverse(by_mass, m, u), _inverse(by_light, m, u))
+    c200c = median_concentration(log_m, z, cosmos) * 10 ** (CONCENTRATION_DEX * rng.standard_normal(n))
+    r200c_mpc = cosmos.r200c_kpc(log_m, z) * (1 + z) / 1e3
+    radius = r200c_mpc * nfw_radius(rng.random(n), c200c)
+    cosine, turn = 2 * rng.random(n) - 1, 2 * np.pi * rng.random(n)
+    near_mpc = 3e-3 * rng.standard_normal((2, n))  # the burst's place in its galaxy
+    across = np.where(satellite, radius * np.sqrt(1 - cosine**2), 0.0)
+    haloes = Haloes(
+        line=np.arange(n),
+        log_m200c=log_m,
+        z=np.asarray(z),
+        z_seen=(1 + z) * (1 + PECULIAR_KMS / LIGHT_KMS * rng.standard_normal(n)) - 1,
+        east_mpc=across * np.cos(turn) + near_mpc[0],
+        north_mpc=across * np.sin(turn) + near_mpc[1],
+        c200c=c200c,
+        holds_burst=np.ones(n, dtype=bool),
+    )
+    return haloes, satellite
+
+
+def _inverse(weights, x, u) -> np.ndarray:
+    grown = np.cumsum(weights)
+    return np.interp(u, grown / grown[-1], x)
+
+
+def _satellite_hosts(galaxies: Galaxies, satellite, haloes: Haloes, host_row, rng):
+    """Hosts that are satellites: a galaxy of some 1e10 Msun, planted at the line, moving in its halo."""
+    from haloledger.cosmos.background import cosmology
+    from haloledger.rehearse.sky.structure import velocity_dispersion_kms
+
+    halo = np.flatnonzero(satellite)
+    k = len(halo)
+    sigma = velocity_dispersion_kms(haloes.log_m200c[halo], haloes.z[halo], cosmology())
+    added = Galaxies(
+        halo=halo,
+        central=np.zeros(k, dtype=bool),
+        log_mstar=10.2 + 0.3 * rng.standard_normal(k),
+        z_seen=(1 + haloes.z_seen[halo]) * (1 + sigma / LIGHT_KMS * rng.standard_normal(k)) - 1,
+        east_mpc=3e-3 * rng.standard_normal(k),
+        north_mpc=3e-3 * rng.standard_normal(k),
+    )
+    host_row = host_row.copy()
+    host_row[halo] = len(galaxies) + np.arange(k)
+    return join([galaxies, added]), host_row
+
+
+def spread_on_sky(n: int) -> tuple[np.ndarray, np.ndarray]:
+    """Directions [deg] far from each other: a spiral of equal areas."""
+    k = np.arange(n) + 0.5
+    return (k * 180 * (3 - 5**0.5)) % 360, np.degrees(np.arcsin(1 - 2 * k / n))
+
+
+def true_columns(haloes: Haloes, z_burst, cosmos: Cosmos) -> np.ndarray:
+    """Observer-frame DM [pc cm-3] of each halo on its line."""
+    per_mpc = 1e3 / (1 + haloes.z)
+    impact = np.hypot(haloes.east_mpc, haloes.north_mpc) * per_mpc
+    r200c = cosmos.r200c_kpc(haloes.log_m200c, haloes.z)
+    gap = cosmos.comoving_distance_mpc(z_burst)[haloes.line] - cosmos.comoving_distance_mpc(haloes.z)
+    rows = np.flatnonzero(impact < r200c)
+    part = pick(haloes, rows)
+    dm = np.zeros(len(haloes))
+    behind = (gap * per_mpc)[rows]
+    dm[rows] = columns.column_rest(impact[rows], r200c[rows], part.log_m200c, part.c200c, behind, cosmos)
+    return dm / (1 + haloes.z)
