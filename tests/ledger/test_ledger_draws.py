@@ -157,12 +157,16 @@ def test_poor_localisation_widens_the_interval(planck):
 def test_outside_the_footprint_reach_is_zero(tmp_path):
     path = tmp_path / "field.txt"
     path.write_text("10 -5\n20 -5\n20 5\n10 5\n", encoding="utf-8")
-    groups = sky.Table(rows=[sky.group()])
-    row = audit(
-        sky.bursts(sky.burst()), groups=[groups], footprints=[str(path)], models=["blended"], draws=32
-    ).sightlines[0]
+    far, here = (sky.Table(rows=[sky.group(ra=ra, dec=dec)]) for ra, dec in ((15.0, 0.0), sky.HERE))
+    row, other = (
+        audit(sky.bursts(sky.burst()), groups=[g], footprints=[str(path)], models=["blended"], draws=32).sightlines[0]
+        for g in (far, here)
+    )
     assert row["reach"] == 0
-    assert "outside every footprint" in row["note"]
+    assert "could list nothing here" in row["note"]
+    # a list that shows a halo out here has no such footprint: nothing is known of its reach
+    assert np.ma.is_masked(other["reach"])
+    assert "not all lists have one" in other["note"]
 
 
 @pytest.mark.parametrize(

@@ -11,6 +11,7 @@ from haloledger.cosmos.mean_dm import mean_cosmic_dm
 from haloledger.cosmos.scatter import relative_dm
 from haloledger.engine.universe import Universe
 from haloledger.reach.census import Census
+from haloledger.reach.coverage import Reach
 from haloledger.reach.diffuse import DiffuseWidth, diffuse_draws
 from haloledger.sightlines.draws import Sightline
 
@@ -27,8 +28,10 @@ TERMS = (
     "dm_after_mw_foreground",
     "dm_after_all",
 )
-CIRCULAR = ("dm_after_mw_foreground", "dm_after_all")
-"""Not printed where the redshift itself was drawn from the observed DM."""
+EXTRA_TERMS = ("dm_disc_crossing",)
+"""Beside them: discs of foreground galaxies are neither cosmic gas nor halo gas."""
+CIRCULAR = ("dm_host_obs", "dm_after_mw_foreground", "dm_after_all")
+"""Not printed where the redshift itself was drawn from the observed DM: the host then depends on the redshift drawn."""
 
 
 @dataclass(frozen=True)
@@ -45,23 +48,24 @@ def budget(
     ends: Ends,
     foreground: np.ndarray,
     at_source: np.ndarray,
+    disc_crossing: np.ndarray,
     census: Census,
     census_factor: np.ndarray,
     width: DiffuseWidth,
-    reach: float,
+    reach: Reach,
     universe: Universe,
     cosmos: Cosmos,
 ) -> dict[str, np.ndarray]:
-    """All terms of TERMS as draws (n_draws,) [pc cm-3].
+    """All terms of TERMS and EXTRA_TERMS as draws (n_draws,) [pc cm-3].
 
     Gas is conserved in every draw: diffuse mean = mean cosmic - halo census x kept fraction of the draw.
-    reach: share of the average halo DM that the catalogues would have listed here. NaN, where it has not been
-    determined, stands for anything between 0 and 1 and is drawn so: the unlisted term says what not knowing costs.
+    reach: bounds of the share of the average halo DM that the catalogues would have listed here. Where they differ it
+    is drawn between them: the unlisted term then says what not knowing costs.
     """
     diffuse_score, cosmic_score = universe.normals("cosmic", [f"{sightline.burst}|diffuse", f"{sightline.burst}|total"])
     line, share = universe.uniforms("unlisted", [f"{sightline.burst}|line", f"{sightline.burst}|reach"])
     halo_mean = census.mean(sightline.z, census_factor)
-    unlisted_share = 1 - (share if np.isnan(reach) else np.full_like(share, reach))
+    unlisted_share = 1 - reach.draws(share)
     if universe.fixed:
         unlisted = unlisted_share * halo_mean
     else:
@@ -72,7 +76,7 @@ def budget(
     if universe.fixed:
         diffuse = np.maximum(mean_cosmic_dm(sightline.z, cosmos) - halo_mean, 0)
     total_scatter = 1.0 if universe.fixed else relative_dm(sightline.z, cosmic_score)
-    after_mw = sightline.dm - ends.mw_disc - ends.mw_halo - foreground
+    after_mw = sightline.dm - ends.mw_disc - ends.mw_halo - foreground - disc_crossing
     cosmic = diffuse + foreground + unlisted
     return {
         "dm_mw_disc": ends.mw_disc,
@@ -86,4 +90,5 @@ def budget(
         "dm_host_obs": ends.host_obs,
         "dm_after_mw_foreground": after_mw,
         "dm_after_all": after_mw - unlisted - diffuse - at_source - ends.host_obs,
+        "dm_disc_crossing": disc_crossing,
     }

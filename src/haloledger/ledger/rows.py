@@ -2,11 +2,14 @@
 
 from __future__ import annotations
 
+from dataclasses import dataclass
+
 import numpy as np
 
 from haloledger.gas.models import Model
 from haloledger.haloes.build import Haloes
-from haloledger.ledger.budget import CIRCULAR, TERMS
+from haloledger.haloes.distances import NEARBY_MPC
+from haloledger.ledger.budget import CIRCULAR, EXTRA_TERMS, TERMS
 from haloledger.ledger.columns import STATISTICS
 from haloledger.ledger.crossing import Crossing
 from haloledger.ledger.shares import mean_shares, variance_shares
@@ -35,7 +38,7 @@ def sightline_row(
         "z": _or_none(sightline.z_given),
         "dm": sightline.dm_given,
     }
-    for term in TERMS:
+    for term in TERMS + EXTRA_TERMS:
         circular = np.isnan(sightline.z_given) and term in CIRCULAR
         for name, value in statistics(terms[term]).items():
             row[f"{term}_{name}"] = None if circular else float(value)
@@ -50,32 +53,45 @@ def sightline_row(
     }
 
 
+@dataclass(frozen=True)
+class Gas:
+    """What the entries of one ledger hold: draws (n_haloes, n_draws) [pc cm-3], and the model behind each row.
+
+    in_sum  rows that count in the foreground sum (n_haloes,)
+    """
+
+    dm: np.ndarray
+    disc: np.ndarray
+    in_sum: np.ndarray
+    models: list[Model]
+
+
 def entry_rows(
-    sightline: Sightline, model: Model, haloes: Haloes, crossing: Crossing, dm: np.ndarray, shared: list[np.ndarray]
+    sightline: Sightline, model: Model, haloes: Haloes, crossing: Crossing, gas: Gas, shared: list[np.ndarray]
 ) -> list[dict]:
     """Rows of the entries table for one sightline and model: crossed haloes by falling mean DM, then `shared`.
 
-    dm  (n_haloes, n_draws); haloes that no draw crosses are left out.
+    Haloes that no draw crosses, gas or disc, are left out.
     """
-    foreground = ~crossing.at_source
+    dm, foreground = gas.dm, gas.in_sum
     share = np.ma.masked_all(len(dm))
     share[foreground] = mean_shares(dm[foreground])
     own = np.full(len(dm), np.nan)
     own[foreground], rest = variance_shares(dm[foreground], shared)
-    crossed = np.flatnonzero((dm > 0).any(axis=1))
+    crossed = np.flatnonzero(((dm > 0) | (gas.disc > 0)).any(axis=1))
     order = crossed[np.lexsort((haloes.id[crossing.index[crossed]], -dm[crossed].mean(axis=1)))]
-    rows = [_entry_row(i, sightline, model, haloes, crossing, dm[i], share[i], own[i]) for i in order]
-    if foreground[crossed].any():
+    rows = [_entry_row(i, sightline, model, haloes, crossing, gas, share[i], own[i]) for i in order]
+    if (foreground & (dm > 0).any(axis=1)).any():
         rows.append({"burst": sightline.burst, "model": model.name, "halo": "shared", "variance_share": rest})
     return rows
 
 
-def _entry_row(i, sightline, model, haloes, crossing: Crossing, dm, share, own) -> dict:
-    h = crossing.index[i]
-    mass, impact, gas = (statistics(a) for a in (crossing.log_m200c[i], crossing.impact_kpc[i], dm))
+def _entry_row(i, sightline, model, haloes, crossing: Crossing, gas: Gas, share, own) -> dict:
+    h, dm = crossing.index[i], gas.dm[i]
+    mass, impact, spread = (statistics(a) for a in (crossing.log_m200c[i], crossing.impact_kpc[i], dm))
     separation = separation_deg(haloes.ra_deg[h], haloes.dec_deg[h], sightline.ra_deg, sightline.dec_deg)
     boundary = np.median(
-        np.arcsin(np.minimum(model.boundary_r200c * crossing.r200c_kpc[i] / crossing.distance_kpc[i], 1))
+        np.arcsin(np.minimum(gas.models[i].boundary_r200c * crossing.r200c_kpc[i] / crossing.distance_kpc[i], 1))
     )
     return {
         "burst": sightline.burst,
@@ -100,20 +116,30 @@ def _entry_row(i, sightline, model, haloes, crossing: Crossing, dm, share, own) 
         "p_front": float((crossing.behind_kpc[i] > 0).mean()),
         "p_member": float(haloes.p_member[h]),
         "p_crossed": float((dm > 0).mean()),
-        "dm_mean": float(gas["mean"]),
-        "dm_p16": float(gas["p16"]),
-        "dm_p50": float(gas["p50"]),
-        "dm_p84": float(gas["p84"]),
-        "dm_crossed_p50": float(np.median(dm[dm > 0])),
+        "dm_mean": float(spread["mean"]),
+        "dm_p16": float(spread["p16"]),
+        "dm_p50": float(spread["p50"]),
+        "dm_p84": float(spread["p84"]),
+        "dm_crossed_p50": float(np.median(dm[dm > 0])) if (dm > 0).any() else None,
         "share": None if np.ma.is_masked(share) else float(share),
-        "variance_share": None if crossing.at_source[i] else float(own),
+        "variance_share": float(own) if gas.in_sum[i] else None,
         "boundary_arcmin": float(np.degrees(boundary) * 60),
-        "note": "; ".join(_entry_notes(i, h, model, haloes, crossing)),
+        "note": "; ".join(_entry_notes(i, h, haloes, crossing, gas)),
+        **_disc_cells(gas.disc[i]),
     }
 
 
-def _entry_notes(i, h, model: Model, haloes: Haloes, crossing: Crossing) -> list[str]:
+def _disc_cells(disc: np.ndarray) -> dict[str, float]:
+    if not (disc > 0).any():
+        return {}
+    return {f"dm_disc_crossing_{name}": float(value) for name, value in statistics(disc).items()}
+
+
+def _entry_notes(i, h, haloes: Haloes, crossing: Crossing, gas: Gas) -> list[str]:
     notes = [str(haloes.note[h])] if haloes.note[h] else []
+    model = gas.models[i]
+    if (gas.disc[i] > 0).any():
+        notes.append(f"disc crossing in {(gas.disc[i] > 0).mean():.0%} of draws")
     low, high = model.log_mass_range
     outside = float(((crossing.log_m200c[i] < low) | (crossing.log_m200c[i] > high)).mean())
     if outside > 0.16:
@@ -125,12 +151,14 @@ def _entry_notes(i, h, model: Model, haloes: Haloes, crossing: Crossing) -> list
     if np.median(crossing.log_m200c[i]) < LOG_M_LEAST:
         notes.append(f"lighter than 1e{LOG_M_LEAST:g} Msun: the diffuse term counts the gas of such haloes too")
     if crossing.at_source[i]:
-        notes.append("the burst sits in this halo: outside the foreground sum, depth drawn")
+        place = "in the foreground sum, as asked" if gas.in_sum[i] else "outside the foreground sum"
+        notes.append(f"the burst sits in this halo: {place}, depth drawn")
     return notes
 
 
 def _z_kind(haloes: Haloes, h: int) -> str:
-    if np.isfinite(haloes.distance_mpc[h]):
+    near = np.isfinite(haloes.distance_mpc[h]) and haloes.distance_mpc[h] <= NEARBY_MPC
+    if near or not np.isfinite(haloes.z[h]):
         return "distance"
     return "phot" if haloes.photometric[h] else "spec"
 

@@ -12,17 +12,18 @@ from haloledger.catalogs.canonical import Bursts
 from haloledger.cosmos.background import Cosmos
 from haloledger.engine.universe import Universe
 from haloledger.gas.models import Model
-from haloledger.haloes.build import Haloes, mass_ceiling
-from haloledger.haloes.distances import z_floor
+from haloledger.haloes.build import Haloes, mass_ceiling, point_mass
+from haloledger.haloes.distances import point_redshift, z_floor
 from haloledger.haloes.draws import relation_notes
 from haloledger.ledger.budget import Ends, budget
 from haloledger.ledger.crossing import Crossing, cross
+from haloledger.ledger.disc_crossing import disc_dm, disc_notes
 from haloledger.ledger.entries import halo_dm
 from haloledger.ledger.kept import census_factor
 from haloledger.ledger.nuisances import shared_columns
-from haloledger.ledger.rows import entry_rows, sightline_row
+from haloledger.ledger.rows import Gas, entry_rows, sightline_row
 from haloledger.reach.census import Census, take_census
-from haloledger.reach.coverage import reach_of
+from haloledger.reach.coverage import deepest_by_mass, place, reach_bounds
 from haloledger.reach.diffuse import DiffuseWidth, solve_width
 from haloledger.sightlines.draws import Sightline, directions, given_redshift, observed_dm
 from haloledger.sightlines.host import holds_burst, is_host
@@ -32,6 +33,7 @@ from haloledger.sightlines.terms import host_obs, host_rest, mw_disc, mw_halo
 
 SIGMAS = 5.0
 """Localisation and centre errors are searched out to this many sigma."""
+LOCAL = "local"  # haloes of the built-in table: they say nothing of where catalogues look
 LOCAL_Z = 0.012
 """Below it a distance taken from the redshift alone is poor (50 Mpc)."""
 
@@ -59,6 +61,8 @@ class Ground:
     cosmos: Cosmos
     electrons: Callable[[float, float], float] | None
     shared: list[np.ndarray]
+    deepest: np.ndarray  # redshift to which each mass bin of the census is listed
+    source_in_sum: bool = False  # haloes that hold the burst count in its foreground sum
 
 
 @dataclass(frozen=True)
@@ -74,7 +78,14 @@ class Ledger:
 
 
 def prepare(
-    bursts: Bursts, haloes: Haloes, gas: list[Model], footprints: list, universe: Universe, cosmos: Cosmos, electrons
+    bursts: Bursts,
+    haloes: Haloes,
+    gas: list[Model],
+    footprints: list,
+    universe: Universe,
+    cosmos: Cosmos,
+    electrons,
+    source_in_sum: bool = False,
 ) -> Ground:
     """Everything that is made once: who is near whom, and each model's census."""
     return Ground(
@@ -87,15 +98,19 @@ def prepare(
         cosmos=cosmos,
         electrons=electrons,
         shared=shared_columns(universe),
+        deepest=deepest_by_mass(point_mass(haloes, cosmos), point_redshift(haloes, cosmos)),
+        source_in_sum=source_in_sum,
     )
 
 
 def make_ledger(ground: Ground, i: int, keep_draws: bool = False) -> list[Ledger]:
     """The ledgers of burst i, one a model."""
-    sightline, ends, note = _sightline(ground, i)
+    sightline, milky_way, note = _sightline(ground, i)
     index = ground.near[i]
     index = index[~is_host(ground.bursts, i, ground.haloes, index, ground.cosmos)]
-    reach, said = reach_of(sightline.ra_deg, sightline.dec_deg, ground.footprints)
+    outside, said = place(sightline.ra_deg, sightline.dec_deg, ground.footprints)
+    if outside and (ground.haloes.kind[index] != LOCAL).any():
+        outside, said = False, "outside every footprint given, yet haloes are listed near: not all lists have one"
     note = [*note, said, *relation_notes(ground.haloes, index, ground.universe)]
     crossings: dict[str | float, Crossing] = {}
     ledgers = []
@@ -103,7 +118,10 @@ def make_ledger(ground: Ground, i: int, keep_draws: bool = False) -> list[Ledger
         relation = gas.model.concentration
         if relation not in crossings:
             crossings[relation] = _cross(ground, i, sightline, index, relation)
-        ledgers.append(_one_model(ground, gas, sightline, ends, crossings[relation], reach, note, keep_draws))
+        crossing = crossings[relation]
+        host, host_said = host_obs(ground.bursts, i, sightline.z, ground.universe, crossing.halo_modelled)
+        ends, said = Ends(*milky_way, host), [*note, host_said]
+        ledgers.append(_one_model(ground, gas, sightline, ends, crossing, outside, said, keep_draws))
     return ledgers
 
 
@@ -125,7 +143,8 @@ def _gas_ground(model: Model, universe: Universe, cosmos: Cosmos) -> GasGround:
     return GasGround(model, census, census_factor(model, universe, cosmos), solve_width(census, cosmos))
 
 
-def _sightline(ground: Ground, i: int) -> tuple[Sightline, Ends, list[str]]:
+def _sightline(ground: Ground, i: int) -> tuple[Sightline, tuple[np.ndarray, np.ndarray], list[str]]:
+    """Draws of the line itself, of the Milky Way's disc and halo, and what is said of them."""
     bursts, universe = ground.bursts, ground.universe
     disc, disc_said = mw_disc(bursts, i, universe, ground.electrons)
     halo, halo_said = mw_halo(bursts, i, universe)
@@ -138,7 +157,6 @@ def _sightline(ground: Ground, i: int) -> tuple[Sightline, Ends, list[str]]:
         host, _ = _host_guess(bursts, i, universe)
         z = redshift_from_dm(name, dm, disc + halo, host, universe, ground.cosmos)
         note.append(f"redshift drawn from P(z | DM), median {np.median(z):.2f}: no residual is given")
-    host, host_said = host_obs(bursts, i, z, universe)
     sightline = Sightline(
         burst=name,
         ra_deg=float(bursts.ra_deg[i]),
@@ -151,7 +169,7 @@ def _sightline(ground: Ground, i: int) -> tuple[Sightline, Ends, list[str]]:
         loc_arcsec=float(np.nan_to_num(bursts.loc_major_arcsec[i])),
         note="",
     )
-    return sightline, Ends(disc, halo, host), [*note, disc_said, halo_said, host_said]
+    return sightline, (disc, halo), [*note, disc_said, halo_said]
 
 
 def _host_guess(bursts: Bursts, i: int, universe: Universe) -> tuple[np.ndarray, str]:
@@ -178,19 +196,22 @@ def _one_model(
     sightline: Sightline,
     ends: Ends,
     crossing: Crossing,
-    reach: float,
+    outside: bool,
     note: list[str],
     keep_draws: bool,
 ) -> Ledger:
     ids = ground.haloes.id[crossing.index]
     dm = halo_dm(crossing, ids, gas.model, ground.universe, ground.cosmos)
-    front = ~crossing.at_source
-    crossed = dm[front] > 0
+    disc = disc_dm(sightline.burst, ground.haloes, crossing, ground.universe, ground.cosmos)
+    in_sum = ~crossing.at_source | ground.source_in_sum
+    crossed = dm[in_sum] > 0
+    reach = reach_bounds(float(np.median(sightline.z)), gas.census, ground.deepest, outside)
     terms = budget(
         sightline,
         ends,
-        dm[front].sum(axis=0),
-        dm[~front].sum(axis=0),
+        dm[in_sum].sum(axis=0),
+        dm[~in_sum].sum(axis=0),
+        disc.sum(axis=0),
         gas.census,
         gas.census_factor,
         gas.width,
@@ -198,26 +219,31 @@ def _one_model(
         ground.universe,
         ground.cosmos,
     )
-    said = [*note, *_model_notes(gas, sightline, crossing, dm)]
+    said = [*note, *_model_notes(gas, sightline), *disc_notes(ground.haloes, crossing, disc)]
+    held = Gas(dm, disc, in_sum, [gas.model] * len(dm))
     row = sightline_row(
-        sightline, gas.model, terms, int(crossed.any(axis=1).sum()), float(crossed.sum(axis=0).mean()), reach, said
+        sightline,
+        gas.model,
+        terms,
+        int(crossed.any(axis=1).sum()),
+        float(crossed.sum(axis=0).mean()),
+        reach.known,
+        said,
     )
     return Ledger(
         burst=sightline.burst,
         model=gas.model.name,
         row=row,
-        entries=entry_rows(sightline, gas.model, ground.haloes, crossing, dm, ground.shared),
+        entries=entry_rows(sightline, gas.model, ground.haloes, crossing, held, ground.shared),
         terms=terms if keep_draws else None,
         entry_draws=_entry_draws(sightline, gas.model, ids, crossing, dm) if keep_draws else None,
     )
 
 
-def _model_notes(gas: GasGround, sightline: Sightline, crossing: Crossing, dm: np.ndarray) -> list[str]:
+def _model_notes(gas: GasGround, sightline: Sightline) -> list[str]:
     notes = []
     if np.isfinite(sightline.z_given) and gas.width.floored_at(sightline.z_given):
         notes.append("haloes of this model alone scatter more than the named total: diffuse scatter at its floor")
-    if crossing.at_source.any() and (dm[crossing.at_source] > 0).any():
-        notes.append("the burst sits in a listed halo: its DM is at the source, the default host prior may repeat some")
     return notes
 
 

@@ -43,6 +43,14 @@ class Census:
         low, high = self.mean_by_mass[:, edge], self.mean_by_mass[:, edge + 1]
         return ((low + share * (high - low)) * factor_by_mass).sum(axis=0)
 
+    def share_before(self, z: float, deepest: np.ndarray) -> float:
+        """Share of the mean halo DM to z in haloes nearer than `deepest`, a redshift for each mass bin (n_mass,)."""
+        edge, share = _between(np.minimum(z, deepest))
+        row = np.arange(len(self.mean_by_mass))
+        low, high = self.mean_by_mass[row, edge], self.mean_by_mass[row, edge + 1]
+        whole = self.mean(np.array([z]), np.ones((len(row), 1)))[0]
+        return float((low + share * (high - low)).sum() / max(whole, 1e-12))
+
     def lines(self, z, pick: np.ndarray) -> np.ndarray:
         """Halo DM to z (k,) on the random lines `pick` (k,)."""
         edge, share = _between(z)
