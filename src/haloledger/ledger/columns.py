@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
-from haloledger.ledger.budget import TERMS
+from haloledger.ledger.budget import EXTRA_TERMS, TERMS
 
 STATISTICS = ("mean", "p16", "p50", "p84")
 
@@ -18,7 +18,8 @@ _TERM_MEANING = {
     "dm_cosmic_with_foreground": "diffuse + listed + unlisted: cosmic DM after looking",
     "dm_at_source": "listed haloes the burst sits in",
     "dm_host_obs": "host, observer frame",
-    "dm_after_mw_foreground": "observed - Milky Way - listed foreground",
+    "dm_disc_crossing": "interstellar medium of foreground galaxies whose disc the line crosses",
+    "dm_after_mw_foreground": "observed - Milky Way - listed foreground - discs crossed",
     "dm_after_all": "observed - all terms; negative values are results",
 }
 
@@ -32,10 +33,10 @@ class Column:
     meaning: str
 
 
-def _term_columns() -> list[Column]:
+def _term_columns(terms: tuple[str, ...]) -> list[Column]:
     return [
         Column(f"{term}_{statistic}", "pc cm-3", f"{_TERM_MEANING[term]}; {statistic} of the draws")
-        for term in TERMS
+        for term in terms
         for statistic in STATISTICS
     ]
 
@@ -47,13 +48,14 @@ SIGHTLINES = [
     Column("dec", "deg", "declination, ICRS"),
     Column("z", "", "redshift as given; masked: drawn from P(z | DM)"),
     Column("dm", "pc cm-3", "observed dispersion measure"),
-    *_term_columns(),
+    *_term_columns(TERMS),
     Column("n_haloes", "", "haloes crossed in at least one draw, outside the burst's own"),
     Column("n_crossed_mean", "", "mean number of haloes crossed"),
     Column("reach", "", "share of the average halo DM these catalogues would have listed; masked: not determined"),
     Column("control_p", "", "chance of a larger sum on control sightlines; masked: not determined"),
     Column("verdict", "text", "keep, check or set aside; masked: not determined"),
     Column("reasons", "text", "reasons of the verdict; masked: not determined"),
+    *_term_columns(EXTRA_TERMS),
     Column("note", "text", "what to know before using the numbers of this row"),
 ]
 
@@ -88,5 +90,9 @@ ENTRIES = [
     Column("share", "", "mean DM over the mean foreground sum; masked where that is zero"),
     Column("variance_share", "", "share of the sum's variance that is this halo's own"),
     Column("boundary_arcmin", "arcmin", "median radius of the model's boundary on the sky"),
+    *(
+        Column(f"dm_disc_crossing_{s}", "pc cm-3", f"{_TERM_MEANING['dm_disc_crossing']}; masked: no crossing")
+        for s in STATISTICS
+    ),
     Column("note", "text", "what to know before using the numbers of this row"),
 ]

@@ -48,6 +48,11 @@ class Crossing:
         """Impact parameter over r200c."""
         return self.impact_kpc / self.r200c_kpc
 
+    @property
+    def halo_modelled(self) -> np.ndarray:
+        """Draws (n_draws,) in which a listed halo holds the burst: the host's own halo is that one."""
+        return (self.at_source[:, None] & self.own).any(axis=0)
+
 
 def cross(
     sightline: Sightline,

@@ -7,6 +7,7 @@ from collections.abc import Mapping
 
 from haloledger.errors import InputError
 from haloledger.haloes.relations import STELLAR_TO_HALO
+from haloledger.sightlines.terms import mw_halo_laws
 
 NUISANCES = {
     "relation": f"stellar-to-halo relation: {', '.join(STELLAR_TO_HALO)}",
@@ -14,7 +15,7 @@ NUISANCES = {
     "hydrostatic_bias": "(1-b) of X-ray and SZ masses; drawn as the card says",
     "kept": "offset of the kept fraction of all haloes [dex]; drawn as the model says",
     "mw_disc": "scale of the Milky Way disc; 1 leaves it as given",
-    "mw_halo": "DM of the Milky Way halo [pc cm-3], where the table gives none",
+    "mw_halo": "DM of the Milky Way halo [pc cm-3], or a law by name, where the table gives none",
     "host_rest": "rest-frame DM of every host [pc cm-3], where the table gives none",
 }
 POSITIVE = ("hydrostatic_bias", "mw_disc")
@@ -34,10 +35,13 @@ def _checked_value(name: str, value: str) -> str:
         if value not in STELLAR_TO_HALO:
             raise InputError(f"--hold relation={value}: not known. Write one of {', '.join(STELLAR_TO_HALO)}.")
         return value
+    if name == "mw_halo" and value in mw_halo_laws():
+        return value
     try:
         number = float(value)
     except ValueError:
-        raise InputError(f"--hold {name}={value}: not a number. It is the {NUISANCES[name]}.") from None
+        laws = f" Laws: {', '.join(mw_halo_laws())}." if name == "mw_halo" else ""
+        raise InputError(f"--hold {name}={value}: not a number. It is the {NUISANCES[name]}.{laws}") from None
     if not abs(number) < 1e6 or (name in POSITIVE and number <= 0):
         raise InputError(f"--hold {name}={value}: out of range. It is the {NUISANCES[name]}.")
     return value

@@ -11,6 +11,7 @@ import numpy as np
 
 from haloledger.catalogs.canonical import Bursts
 from haloledger.engine.universe import Universe
+from haloledger.sightlines.milky_way import halo_column
 
 LN10 = np.log(10.0)
 
@@ -57,13 +58,34 @@ def mw_halo(bursts: Bursts, i: int, universe: Universe) -> tuple[np.ndarray, str
         dex = _dex(error / given) if np.isfinite(error) and given > 0 else law["scatter_dex"]
         return _log_normal(given, dex, "mw_halo", universe), "Milky Way halo from the table"
     held = universe.held.get("mw_halo")
+    if held in mw_halo_laws():
+        return _by_law(held, bursts, i, universe), f"Milky Way halo by {held}"
     if held is not None:
         return np.full(universe.n_draws, float(held)), "Milky Way halo held"
     return _log_normal(law["median"], law["scatter_dex"], "mw_halo", universe), "Milky Way halo by default"
 
 
-def host_rest(bursts: Bursts, i: int, universe: Universe) -> tuple[np.ndarray, str]:
-    """Host DM draws in the host's rest frame [pc cm-3] (n_draws,); NaN where the table gives it in ours."""
+def mw_halo_laws() -> tuple[str, ...]:
+    """Names of the Milky Way halo laws that `--hold mw_halo=NAME` chooses from."""
+    return tuple(defaults()["mw_halo_laws"])
+
+
+def _by_law(name: str, bursts: Bursts, i: int, universe: Universe) -> np.ndarray:
+    law = defaults()["mw_halo_laws"][name]
+    median = law.get("median")
+    if median is None:
+        median = halo_column(law, *galactic(bursts.ra_deg[i], bursts.dec_deg[i]))
+    return _log_normal(median, law["scatter_dex"], "mw_halo", universe)
+
+
+def host_rest(
+    bursts: Bursts, i: int, universe: Universe, halo_modelled: np.ndarray | None = None
+) -> tuple[np.ndarray, str]:
+    """Host DM draws in the host's rest frame [pc cm-3] (n_draws,); NaN where the table gives it in ours.
+
+    halo_modelled  draws (n_draws,) in which a listed halo holds the burst: there the default law is one without the
+                   host's own halo, so that its gas is not counted twice
+    """
     score = universe.normals("host", [bursts.burst[i]])[0]
     given, error = bursts.dm_host_rest[i], bursts.dm_host_err[i]
     if np.isfinite(given):
@@ -73,13 +95,26 @@ def host_rest(bursts: Bursts, i: int, universe: Universe) -> tuple[np.ndarray, s
     held = universe.held.get("host_rest")
     if held is not None:
         return np.full(universe.n_draws, float(held)), "host held"
-    law = defaults()["host"]
-    return law["median_rest"] * np.exp(law["scatter_ln"] * score), f"host by default ({law['name']})"
+    whole = defaults()["host"]
+    dm = _host_law(whole, score)
+    if halo_modelled is None or not halo_modelled.any():
+        return dm, f"host by default ({whole['name']})"
+    inner = defaults()["host_without_halo"]
+    return np.where(halo_modelled, _host_law(inner, score), dm), (
+        f"host without its own halo ({inner['name']}) in {halo_modelled.mean():.0%} of draws,"
+        " since a listed halo holds the burst and is counted beside it"
+    )
 
 
-def host_obs(bursts: Bursts, i: int, z: np.ndarray, universe: Universe) -> tuple[np.ndarray, str]:
+def _host_law(law: dict, score: np.ndarray) -> np.ndarray:
+    return law["median_rest"] * np.exp(law["scatter_ln"] * score)
+
+
+def host_obs(
+    bursts: Bursts, i: int, z: np.ndarray, universe: Universe, halo_modelled: np.ndarray | None = None
+) -> tuple[np.ndarray, str]:
     """Host DM draws in the observer's frame [pc cm-3]: rest / (1 + z_burst), or as the table gives it."""
-    rest, said = host_rest(bursts, i, universe)
+    rest, said = host_rest(bursts, i, universe, halo_modelled)
     if np.isfinite(bursts.dm_host_obs[i]) and not np.isfinite(bursts.dm_host_rest[i]):
         score = universe.normals("host", [bursts.burst[i]])[0]
         return _given_host(bursts.dm_host_obs[i], bursts.dm_host_err[i], score), said
