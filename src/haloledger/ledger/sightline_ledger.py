@@ -17,7 +17,7 @@ from haloledger.haloes.distances import point_redshift, z_floor
 from haloledger.haloes.draws import relation_notes
 from haloledger.ledger.budget import Ends, budget
 from haloledger.ledger.crossing import Crossing, cross
-from haloledger.ledger.disc_crossing import disc_dm, disc_notes
+from haloledger.ledger.disc_crossing import cross_discs, disc_notes
 from haloledger.ledger.entries import halo_dm
 from haloledger.ledger.kept import census_factor
 from haloledger.ledger.nuisances import shared_columns
@@ -202,7 +202,7 @@ def _one_model(
 ) -> Ledger:
     ids = ground.haloes.id[crossing.index]
     dm = halo_dm(crossing, ids, gas.model, ground.universe, ground.cosmos)
-    disc = disc_dm(sightline.burst, ground.haloes, crossing, ground.universe, ground.cosmos)
+    discs = cross_discs(sightline, ground.haloes, crossing, ground.universe, ground.cosmos)
     in_sum = ~crossing.at_source | ground.source_in_sum
     crossed = dm[in_sum] > 0
     reach = reach_bounds(float(np.median(sightline.z)), gas.census, ground.deepest, outside)
@@ -211,7 +211,7 @@ def _one_model(
         ends,
         dm[in_sum].sum(axis=0),
         dm[~in_sum].sum(axis=0),
-        disc.sum(axis=0),
+        discs.dm.sum(axis=0),
         gas.census,
         gas.census_factor,
         gas.width,
@@ -219,8 +219,8 @@ def _one_model(
         ground.universe,
         ground.cosmos,
     )
-    said = [*note, *_model_notes(gas, sightline), *disc_notes(ground.haloes, crossing, disc)]
-    held = Gas(dm, disc, in_sum, [gas.model] * len(dm))
+    said = [*note, *_model_notes(gas, sightline), *disc_notes(ground.haloes, crossing, discs)]
+    held = Gas(dm, discs.dm, in_sum, [gas.model] * len(dm))
     row = sightline_row(
         sightline,
         gas.model,
