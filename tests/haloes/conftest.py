@@ -60,7 +60,7 @@ def make_groups() -> Callable[..., Groups]:
 
 
 def _filled(given: dict, n: int) -> dict:
-    whole = {"mag_rest", "mass_err_holds_z"}
+    whole = {"mag_rest", "mass_err_holds_z", "z_outlier"}
     return {
         k: np.full(n, v) if isinstance(v, int | float | bool) and k not in whole | {"precedence"} else v
         for k, v in given.items()

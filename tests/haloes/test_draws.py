@@ -87,7 +87,7 @@ def test_shared_zero_point_moves_all_galaxies_together(make_galaxies, planck):
     haloes = halo_list([galaxies], [], planck)
     free, held = (
         draw_haloes(haloes, [0, 1], Universe(1, 4000, held=h), "dutton2014", planck).log_m200c
-        for h in ({}, {"relation": "moster2013", "zero_point": "0"})
+        for h in ({"membership": "0"}, {"relation": "moster2013", "zero_point": "0", "membership": "0"})
     )
     assert np.corrcoef(held)[0, 1] == pytest.approx(0.0, abs=0.05)
     assert np.corrcoef(free)[0, 1] > 0.4

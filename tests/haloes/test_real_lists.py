@@ -35,7 +35,8 @@ def open_ngc(make_galaxies):
 
 def test_open_ngc_becomes_haloes(open_ngc, planck):
     haloes = halo_list([open_ngc], [], planck)
-    assert len(haloes) == len(open_ngc) > 8000
+    assert 0.97 * len(open_ngc) < len(haloes) <= len(open_ngc)
+    assert len(open_ngc) > 8000
     # NGC 4889, the brightest galaxy of Coma, and NGC 1275 in Perseus are giants; the list is of bright galaxies
     mstar = dict(zip(haloes.id, haloes.log_mstar, strict=True))
     assert 11.3 < mstar["ngc:NGC4889"] < 12.0

@@ -13,7 +13,7 @@ from haloledger.haloes.draws import draw_haloes
 from haloledger.haloes.posterior import mean_of_200c
 from haloledger.haloes.relations import load_relation
 
-HELD = {"relation": "moster2013", "zero_point": "0"}
+HELD = {"relation": "moster2013", "zero_point": "0", "membership": "0"}
 
 
 def draws(galaxies, planck, n=20_000, held=HELD, groups=()):
@@ -51,7 +51,7 @@ def test_photometric_redshift_and_mass_as_on_a_grid(name, z, z_err, log_mstar, e
     galaxies = make_galaxies(
         "g", 1, z=z, z_err=z_err, photometric=True, log_mstar=log_mstar, log_mstar_err=err, mass_err_holds_z=not follows
     )
-    drawn = draws(galaxies, planck, held={"relation": name, "zero_point": "0"})
+    drawn = draws(galaxies, planck, held={"relation": name, "zero_point": "0", "membership": "0"})
     mean_z, sd_z, mean_m, sd_m, r = by_grid(planck, name, z, z_err, log_mstar, err, follows)
     # 20,000 draws know a mean to 0.7 per cent of the sd; redshifts are drawn from 49 points
     assert drawn.z.mean() == pytest.approx(mean_z, abs=0.03 * sd_z)
@@ -150,6 +150,7 @@ def test_floor_of_redshift(make_galaxies, planck):
     galaxies = make_galaxies(
         "g",
         4,
+        ra_deg=np.array([10.0, 60.0, 120.0, 200.0]),
         z=z,
         z_err=np.array([0.0, 0.02, 0.02, 0.0]),
         distance_mpc=np.array([np.nan] * 3 + [0.76]),
@@ -160,3 +161,53 @@ def test_floor_of_redshift(make_galaxies, planck):
     assert floor[1] == pytest.approx(0.04, abs=3e-4)
     assert floor[2] == pytest.approx(0.006)
     assert 0 < floor[3] < z_of_luminosity_distance(0.76, planck)
+
+
+def test_outliers_as_on_a_grid(make_galaxies, planck):
+    # the mixture of a narrow and a broad likelihood under one prior, against its sum on a plain grid
+    name, z_obs, err, log_mstar, m_err, f = "moster2013", 0.3, 0.03, 10.2, 0.15, 0.2
+    galaxies = make_galaxies(
+        "g", 1, z=z_obs, z_err=err, photometric=True, log_mstar=log_mstar, log_mstar_err=m_err, z_outlier=f
+    )
+    drawn = draws(galaxies, planck, n=60_000, held=HELD)
+    relation = load_relation(name)
+    # outliers are drawn between 0.3 z and five of their widths
+    z = np.linspace(0.3 * z_obs, z_obs + 5 * 0.3 * (1 + z_obs), 4001)[:, None]
+    m = np.arange(9.5, 16.0, 0.02)
+    y = log_mstar + 2 * np.log10(planck.luminosity_distance_mpc(z) / planck.luminosity_distance_mpc(z_obs))
+    sigma = np.hypot(relation.scatter(z), m_err)
+    number = mass_function(m, z, planck) * np.exp(-0.5 * ((y - mean_of_200c(relation, m, z, planck)) / sigma) ** 2)
+    prior = planck.volume_element(z)[:, 0] * (number / sigma).sum(axis=1)
+    narrow, broad = (
+        np.exp(-0.5 * ((z[:, 0] - z_obs) / s) ** 2) / s
+        for s in (np.hypot(err, 1.3 * 300 / 299792.458), 0.3 * (1 + z_obs))
+    )
+    p = prior * ((1 - f) * narrow + f * broad)
+    for low, high in ((0, 0.2), (0.2, 0.25), (0.25, 0.35), (0.35, 0.45), (0.45, 0.7), (0.7, 3)):
+        expected = p[(z[:, 0] >= low) & (z[:, 0] < high)].sum() / p.sum()
+        # 60,000 draws know a share of 0.1 to 0.0012
+        assert np.mean((drawn.z >= low) & (drawn.z < high)) == pytest.approx(expected, abs=0.006), (low, high)
+    without = draws(make_galaxies("g", 1, z=z_obs, z_err=err, photometric=True, log_mstar=log_mstar), planck)
+    assert np.mean(np.abs(without.z - z_obs) > 0.15) < 1e-3
+    assert np.mean(np.abs(drawn.z - z_obs) > 0.15) > 0.05
+
+
+def test_fixed_has_no_outliers(make_galaxies, planck):
+    haloes = halo_list(
+        [make_galaxies("g", 1, z=0.3, z_err=0.03, photometric=True, log_mstar=10.0, z_outlier=0.9)], [], planck
+    )
+    assert draw_haloes(haloes, [0], Universe(fixed=True), "dutton2014", planck).z[0, 0] == 0.3
+
+
+def test_outliers_are_searched_at_lower_redshift(make_galaxies, planck):
+    galaxies = make_galaxies(
+        "g",
+        2,
+        ra_deg=np.array([10.0, 90.0]),
+        z=0.3,
+        z_err=0.01,
+        photometric=np.array([True, False]),
+        log_mstar=10.0,
+        z_outlier=0.05,
+    )
+    assert z_floor(halo_list([galaxies], [], planck), planck) == pytest.approx([0.12, 0.27], abs=5e-3)

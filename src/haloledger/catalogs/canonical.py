@@ -46,6 +46,7 @@ class Galaxies:
     ]  # canonical band ("g","r","i","z","ks","w1") -> apparent magnitude, system as in `mag_system`
     mag_system: dict[str, str] = field(default_factory=dict)  # band -> "AB" or "Vega"
     mag_rest: bool = False  # magnitudes are already corrected to the rest frame
+    z_outlier: float = 0.0  # share of outliers among the photometric redshifts
     z_is: str = "likelihood"  # or "posterior": then no volume or mass-function prior is put on z
     mass_is: str = "likelihood"  # of log_mstar; log_m200c is always taken as it stands
     mass_err_holds_z: bool = False  # log_mstar_err already contains the redshift error

@@ -55,6 +55,7 @@ def galaxies_from(table: Prepared) -> Galaxies:
         mag={b: table.number(f"mag_{b}")[index] for b in bands},
         mag_system=system,
         mag_rest=card.magnitudes.rest_frame,
+        z_outlier=card.redshift.outliers,
         z_is=card.redshift.taken_as,
         mass_is=card.mass.taken_as or "likelihood",
         mass_err_holds_z=card.mass.error_holds_redshift,

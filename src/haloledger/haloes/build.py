@@ -6,6 +6,7 @@ rows of catalogues -> one galaxy, one group each -> groups merged -> galaxies in
 from __future__ import annotations
 
 import numpy as np
+from scipy.special import ndtri
 
 from haloledger.catalogs.canonical import Galaxies, Groups
 from haloledger.cosmos.background import Cosmos
@@ -21,25 +22,32 @@ from haloledger.haloes.distances import (
 from haloledger.haloes.doubles import merge_galaxies, merge_groups, rows_in_order
 from haloledger.haloes.listing import galaxy_haloes, group_haloes
 from haloledger.haloes.masses import State, log_m200c
-from haloledger.haloes.membership import member_probability
+from haloledger.haloes.membership import MASS_SCORES, Membership, memberships, published
 from haloledger.haloes.nuisances import ZERO_POINT_DEX, RelationOfDraw
-from haloledger.haloes.phase_space import extent
+from haloledger.haloes.phase_space import Extent, extent
 from haloledger.haloes.posterior import MASS_RELATION
 from haloledger.haloes.relations import STELLAR_TO_HALO
+from haloledger.haloes.satellites import occupation
 from haloledger.haloes.table import Haloes, change, join, rows
 
 MEDIAN_RELATION = "moster2013"  # for sizes in the search for doubles and members alone
 CEILING_SIGMA = 3.5
 CEILING_DISTANCE = 2.0
+HOST_BEYOND = 1e-3
+OFF_CENTRE_DEX = 3 * np.log10(2.0)  # (boundary + 1) r200c of the host, at most twice its boundary of one r200c or more
+SAID_UNLISTED = 0.02  # a smaller chance of an unlisted host is not worth a word
+MOST_NAMED = 20
 
 __all__ = ["halo_list", "mass_ceiling", "point_mass", "z_floor"]
 
 
-def halo_list(galaxies: list[Galaxies], groups: list[Groups], cosmos: Cosmos) -> Haloes:
+def halo_list(galaxies: list[Galaxies], groups: list[Groups], cosmos: Cosmos, *, membership: bool = True) -> Haloes:
     """Haloes of all catalogues, each once, in the order of id; `notes` says what was left out or put together.
 
     The order of the catalogues decides which one describes a galaxy that two list, and a group of equal precedence; the
     order of their rows decides nothing.
+
+    membership  False gives every galaxy a halo of its own, in a group or not: to see what that does
     """
     _distinct_rows([*galaxies, *groups])
     group_parts = [group_haloes(g, k, cosmos) for k, g in enumerate(groups)]
@@ -53,7 +61,7 @@ def halo_list(galaxies: list[Galaxies], groups: list[Groups], cosmos: Cosmos) ->
         doubles = sum(map(len, galaxy_parts)) - len(merged_galaxies)
         if doubles:
             notes.append(f"Galaxies listed in more than one catalogue, counted once: {doubles}.")
-    if merged_galaxies is not None and merged_groups is not None:
+    if merged_galaxies is not None and membership:
         merged_galaxies = _without_members(merged_galaxies, merged_groups, notes, cosmos)
     parts = [p for p in (merged_groups, merged_galaxies) if p is not None]
     if not parts:
@@ -87,7 +95,8 @@ def mass_ceiling(haloes: Haloes, cosmos: Cosmos) -> np.ndarray:
     """log10 M200c that 99.9 per cent of draws stay below, whatever the relation, zero point and redshift; shape (n,).
 
     Score 3.5 at the listed redshift; the stellar mass heavier by two zero points, and by three errors of the redshift
-    or two of the distance.
+    or two of the distance. A host drawn in the row's stead counts as the halo that, centred on the row, reaches as far:
+    its centre lies up to r200c off.
     """
     z = point_redshift(haloes, cosmos)
     far = z + 3 * np.hypot(haloes.z_err, PECULIAR_KMS / SPEED_OF_LIGHT_KMS)
@@ -103,7 +112,19 @@ def mass_ceiling(haloes: Haloes, cosmos: Cosmos) -> np.ndarray:
     )
     # a low (1-b) makes a mass heavier: three of its errors, but not below 0.5
     low_b = np.maximum(haloes.one_minus_b - 3 * haloes.one_minus_b_err, np.minimum(haloes.one_minus_b, 0.5))
-    return ceiling + np.log10(haloes.one_minus_b / low_b)
+    return np.maximum(ceiling + np.log10(haloes.one_minus_b / low_b), _host_ceiling(haloes, z, shift, cosmos))
+
+
+def _host_ceiling(haloes: Haloes, z, shift, cosmos: Cosmos) -> np.ndarray:
+    """What a drawn host reaches, but in 1 of 1,000 draws, as a mass centred on the row; -inf where there is none."""
+    result = np.full(len(haloes), -np.inf)
+    index = np.flatnonzero(haloes.p_hosted > HOST_BEYOND)
+    if index.size:
+        score = ndtri(1 - HOST_BEYOND / haloes.p_hosted[index])
+        y = haloes.value[index] + np.minimum(shift[index], 2 * ZERO_POINT_DEX)
+        mass = occupation(cosmos).host(y, z[index], haloes.value_err[index], score)
+        result[index] = mass + OFF_CENTRE_DEX
+    return result
 
 
 def _merge_groups(groups: Haloes, notes: list[str], cosmos: Cosmos) -> Haloes:
@@ -115,15 +136,50 @@ def _merge_groups(groups: Haloes, notes: list[str], cosmos: Cosmos) -> Haloes:
     return change(merged, notes=groups.notes)
 
 
-def _without_members(galaxies: Haloes, groups: Haloes, notes: list[str], cosmos: Cosmos) -> Haloes:
-    size = extent(groups, point_mass(groups, cosmos), cosmos)
-    galaxy_size = extent(galaxies, point_mass(galaxies, cosmos), cosmos)
-    names = {name for text in groups.source_rows for name in text.split(";")}
-    p = member_probability(galaxies, galaxy_size, groups, size, names, cosmos)
-    own = np.flatnonzero(p < 1)
-    if own.size < p.size:
-        notes.append(f"Galaxies that listed groups hold, without a halo of their own: {p.size - own.size}.")
-    return change(rows(change(galaxies, p_member=p), own), notes=galaxies.notes)
+def _without_members(galaxies: Haloes, groups: Haloes | None, notes: list[str], cosmos: Cosmos) -> Haloes:
+    """Galaxies that have a halo of their own in some draw, with the probability that they have none."""
+    names = sorted({name for text in ([] if groups is None else groups.source_rows) for name in text.split(";")})
+    sizes = [[] if h is None else _sizes(h, cosmos) for h in (galaxies, groups)]
+    found = memberships(galaxies, sizes[0], groups, sizes[1], names, cosmos)
+    own = np.flatnonzero(found.listed < 1)
+    _say_members(found, galaxies, names, notes)
+    note = galaxies.note.copy()
+    lone = found.hosted >= SAID_UNLISTED
+    note[lone] = [
+        _added(n, f"in {p:.0%} of draws the halo is that of an unlisted host, off the galaxy")
+        for n, p in _zip(note, found, lone)
+    ]
+    changed = change(galaxies, p_member=found.listed + found.unlisted, p_hosted=found.hosted, note=note)
+    return change(rows(changed, own), notes=galaxies.notes)
+
+
+def _sizes(haloes: Haloes, cosmos: Cosmos) -> list[Extent]:
+    return [extent(haloes, point_mass(haloes, cosmos, score=u), cosmos) for u in MASS_SCORES.tolist()]
+
+
+def _zip(note, found: Membership, lone):
+    return zip(note[lone], found.hosted[lone], strict=True)
+
+
+def _added(note: str, more: str) -> str:
+    return f"{note}; {more}" if note else more
+
+
+def _say_members(found: Membership, galaxies: Haloes, group_rows: list[str], notes: list[str]) -> None:
+    gone = int((found.listed >= 1).sum())
+    if gone:
+        notes.append(f"Galaxies that listed haloes hold, without a halo of their own: {gone}.")
+    if found.claimed:
+        notes.append(f"Galaxies that a heavier galaxy beside them probably holds: {found.claimed}.")
+    if found.unlisted.any():
+        total = found.unlisted.sum()
+        notes.append(f"Galaxies expected to be in haloes that no list has: {total:.3g} of {len(galaxies)}.")
+    lost = (galaxies.listed_group != "") & ~published(galaxies, group_rows)
+    if lost.any():
+        pairs = [f"{a} ({b})" for a, b in zip(galaxies.id[lost], galaxies.listed_group[lost], strict=True)]
+        more = f" and {len(pairs) - MOST_NAMED} more" if len(pairs) > MOST_NAMED else ""
+        shown = ", ".join(pairs[:MOST_NAMED]) + more
+        notes.append(f"group_id that names no listed group, so that place and redshift decide: {shown}.")
 
 
 def _distinct_rows(tables: list[Galaxies | Groups]) -> None:

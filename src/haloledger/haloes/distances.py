@@ -11,6 +11,7 @@ SPEED_OF_LIGHT_KMS = 299792.458
 PECULIAR_KMS = 300.0  # common practice for the field, one dimension
 NEARBY_MPC = 50.0
 DISTANCE_ERROR = 0.2  # share of the distance where a catalogue gives none: 0.4 mag in the modulus, common practice
+LOWEST_OUTLIER = 0.4  # share of the listed redshift down to which outliers are searched
 LOWEST_SHARE = 0.3  # no draw and no search goes below this share of the listed redshift
 MIN_Z = 1e-4
 
@@ -56,4 +57,5 @@ def z_floor(haloes: Haloes, cosmos: Cosmos) -> np.ndarray:
     z = point_redshift(haloes, cosmos)
     err = np.hypot(haloes.z_err, PECULIAR_KMS / SPEED_OF_LIGHT_KMS * (1 + z))
     low = np.maximum(z - 3 * err, LOWEST_SHARE * z)
+    low = np.where(haloes.z_outlier > 0, np.minimum(low, LOWEST_OUTLIER * z), low)
     return np.where(near, z * np.maximum(np.exp(-3 * distance_error_share(haloes)), LOWEST_SHARE), low)

@@ -173,7 +173,11 @@ def _absorb(a: Haloes, i: np.ndarray, b: Haloes, cosmos: Cosmos) -> Haloes:
     notes = a.note[i].copy()
     for what, fill, names_filled in (
         ("distance", np.isnan(a.distance_mpc[i]) & np.isfinite(b.distance_mpc), ("distance_mpc", "distance_err_mpc")),
-        ("spectroscopic redshift", a.photometric[i] & ~b.photometric, ("z", "z_err", "photometric", "z_posterior")),
+        (
+            "spectroscopic redshift",
+            a.photometric[i] & ~b.photometric,
+            ("z", "z_err", "photometric", "z_outlier", "z_posterior"),
+        ),
         ("group", (a.listed_group[i] == "") & (b.listed_group != ""), ("listed_group",)),
     ):
         for name in names_filled:

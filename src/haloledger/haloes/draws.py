@@ -11,8 +11,9 @@ import numpy as np
 from haloledger.cosmos.background import Cosmos
 from haloledger.cosmos.concentration import SCATTER_DEX
 from haloledger.engine.universe import Universe
+from haloledger.haloes.hosts import put_hosts
 from haloledger.haloes.masses import State, log_m200c, naive_log_m200c
-from haloledger.haloes.nuisances import log_one_minus_b, relation_of_draw, zero_point
+from haloledger.haloes.nuisances import held_number, log_one_minus_b, relation_of_draw, zero_point
 from haloledger.haloes.redshifts import draw_redshifts
 from haloledger.haloes.relations import load_relation
 from haloledger.haloes.table import HaloDraws, Haloes, rows
@@ -44,7 +45,9 @@ def draw_haloes(haloes: Haloes, index, universe: Universe, c_relation: str | flo
         for way in ("east", "north")
     )
     mass = rule(part, state, relation, c_relation, cosmos)
-    return HaloDraws(mass, shifts.z, shifts.distance_kpc, offset, east, north, _own(part, universe))
+    own, hosted = _own(part, universe)
+    put_hosts(part, hosted, state, universe, c_relation, cosmos, mass, east, north)
+    return HaloDraws(mass, shifts.z, shifts.distance_kpc, offset, east, north, own, hosted)
 
 
 def relation_notes(haloes: Haloes, index, universe: Universe) -> list[str]:
@@ -61,11 +64,21 @@ def relation_notes(haloes: Haloes, index, universe: Universe) -> list[str]:
     return notes
 
 
-def _own(haloes: Haloes, universe: Universe) -> np.ndarray:
-    own = np.repeat((haloes.p_member < 0.5)[:, None], universe.n_draws, axis=1)
+def _own(haloes: Haloes, universe: Universe) -> tuple[np.ndarray, np.ndarray]:
+    """Where there is a halo, and where it is that of an unlisted host; (n, n_draws) each.
+
+    Fixed, or with the nuisance `membership` held at 0: a galaxy is in a listed halo or not, and no host is drawn.
+    """
+    listed = haloes.p_member - haloes.p_hosted
+    own = np.repeat((listed < 0.5)[:, None], universe.n_draws, axis=1)
+    hosted = np.zeros_like(own)
+    if universe.fixed or held_number(universe, "membership") == 0:
+        return own, hosted
     open_ = np.flatnonzero((haloes.p_member > 0) & (haloes.p_member < 1))
-    own[open_] = universe.uniforms("membership", haloes.id[open_]) >= haloes.p_member[open_, None]
-    return own
+    at = universe.uniforms("membership", haloes.id[open_])
+    own[open_] = at >= listed[open_, None]
+    hosted[open_] = at >= 1 - haloes.p_hosted[open_, None]
+    return own, hosted
 
 
 def _some_normals(universe: Universe, parameter: str, ids: np.ndarray, where: np.ndarray) -> np.ndarray:

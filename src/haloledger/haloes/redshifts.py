@@ -5,6 +5,12 @@
 
 phi is the number of galaxies of that stellar mass, from the same mass function and relation as the halo mass that is
 drawn next: the two draws together are one draw from P(M_halo, z | data). A measured distance within 50 Mpc replaces it.
+
+A photometric redshift may be an outlier: with the catalogue's share f its likelihood is
+
+    (1 - f) N(z_obs | z, err) + f N(z_obs | z, 0.3 (1 + z_obs))
+
+and which of the two holds is drawn by their evidence under the same prior.
 """
 
 from __future__ import annotations
@@ -33,6 +39,8 @@ from haloledger.haloes.table import Haloes, rows
 
 WIDE = 0.05  # error over redshift above which a spectroscopic redshift too is drawn with its prior: the near field
 GRID = np.linspace(-5.0, 5.0, 49)  # in errors around the observed redshift
+WIDE_GRID = np.linspace(0.0, 1.0, 97)
+OUTLIER_WIDTH = 0.3  # of outliers, over 1 + z: ours, a broad component without a preferred place
 ZERO_POINTS = np.arange(-0.4, 0.41, 0.2)
 
 
@@ -72,25 +80,50 @@ def _hubble_flow(haloes: Haloes, listed, score, universe: Universe, relation: Re
     prior = (haloes.kind == "galaxy") & ~haloes.z_posterior & (haloes.photometric | (err > WIDE * listed))
     joint = np.flatnonzero(prior)
     if joint.size:
-        table = _quantiles(rows(haloes, joint), listed[joint], err[joint], relation, zero, cosmos)
+        part = rows(haloes, joint)
+        table, evidence = _quantiles(part, listed[joint], err[joint], relation, zero, cosmos)
         z[joint] = _look_up(table, score[joint], relation, zero)
+        _draw_outliers(z, joint, part, listed[joint], evidence, score, universe, relation, zero, cosmos)
     return z
 
 
-def _quantiles(haloes: Haloes, listed, err, relation: RelationOfDraw, zero, cosmos: Cosmos) -> np.ndarray:
-    """z at the normal scores U_NODES, [halo, relation, zero point, u]."""
+def _draw_outliers(z, joint, haloes: Haloes, listed, evidence, score, universe, relation, zero, cosmos: Cosmos) -> None:
+    """Where the draw is an outlier, write its redshift into z, in place."""
+    open_ = np.flatnonzero(haloes.photometric & (haloes.z_outlier > 0))
+    if not open_.size:
+        return
+    part, at = rows(haloes, open_), listed[open_]
+    wide = OUTLIER_WIDTH * (1 + at)
+    table, far_evidence = _quantiles(part, at, wide, relation, zero, cosmos, WIDE_GRID)
+    f = part.z_outlier[:, None, None]
+    odds = f / (1 - f) * np.exp(np.clip(far_evidence - evidence[open_], -50, 50))
+    share = _look_up_share(odds / (1 + odds), relation, zero)
+    out = universe.uniforms("redshift_outlier", part.id) < share
+    index = joint[open_]
+    z[index] = np.where(out, _look_up(table, score[index], relation, zero), z[index])
+
+
+def _quantiles(haloes: Haloes, listed, err, relation: RelationOfDraw, zero, cosmos: Cosmos, nodes=None):
+    """z at the normal scores U_NODES, [halo, relation, zero point, u], and ln evidence [halo, relation, zero point]."""
+    nodes = np.linspace(0, 1, GRID.size) if nodes is None else nodes
     low = np.maximum(np.maximum(listed - 5 * err, LOWEST_SHARE * listed), MIN_Z)
-    grid = low[:, None] + (listed + 5 * err - low)[:, None] * np.linspace(0, 1, GRID.size)
+    span = (listed + 5 * err - low)[:, None]
+    grid = low[:, None] + span * nodes
     shift = 2 * np.log10(cosmos.luminosity_distance_mpc(grid) / cosmos.luminosity_distance_mpc(listed)[:, None])
     ln_p = -0.5 * ((grid - listed[:, None]) / err[:, None]) ** 2 + np.log(cosmos.volume_element(grid))
     y = np.where(haloes.err_holds_z[:, None], 0.0, shift) + haloes.value[:, None]
     counted = ((haloes.mass_kind == "stellar") & ~haloes.posterior)[:, None, None]
-    table = np.empty((len(haloes), len(relation.names), ZERO_POINTS.size, U_NODES.size))
+    shape = (len(haloes), len(relation.names), ZERO_POINTS.size)
+    table, evidence = np.empty((*shape, U_NODES.size)), np.empty(shape)
     for i, name in enumerate(relation.names):
         true = y[:, None] - (_centre(zero) + ZERO_POINTS)[:, None]
         ln_count = inverse(name, cosmos).ln_count(true, grid[:, None], haloes.value_err[:, None, None])
-        table[:, i] = _invert(ln_p[:, None] + np.where(counted, ln_count, 0.0), grid[:, None])
-    return table
+        ln_joint = ln_p[:, None] + np.where(counted, ln_count, 0.0)
+        table[:, i] = _invert(ln_joint, grid[:, None])
+        top = ln_joint.max(axis=-1)
+        mean = np.exp(ln_joint - top[..., None]).mean(axis=-1)
+        evidence[:, i] = top + np.log(mean * span / err[:, None])
+    return table, evidence
 
 
 def _centre(zero: np.ndarray) -> float:
@@ -115,13 +148,25 @@ def _invert(ln_p: np.ndarray, grid: np.ndarray) -> np.ndarray:
     return result
 
 
-def _look_up(table: np.ndarray, score: np.ndarray, relation: RelationOfDraw, zero: np.ndarray) -> np.ndarray:
-    """Bilinear in zero point and normal score; (n, n_draws)."""
+def _zero_place(zero: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
     at = np.clip((zero - _centre(zero) - ZERO_POINTS[0]) / (ZERO_POINTS[1] - ZERO_POINTS[0]), 0, ZERO_POINTS.size - 1)
     i = np.minimum(at.astype(int), ZERO_POINTS.size - 2)
+    return i, at - i
+
+
+def _look_up_share(share: np.ndarray, relation: RelationOfDraw, zero: np.ndarray) -> np.ndarray:
+    """Linear in the zero point; (n, n_draws)."""
+    i, w = _zero_place(zero)
+    halo, r = np.arange(len(share))[:, None], relation.index
+    return (1 - w) * share[halo, r, i] + w * share[halo, r, i + 1]
+
+
+def _look_up(table: np.ndarray, score: np.ndarray, relation: RelationOfDraw, zero: np.ndarray) -> np.ndarray:
+    """Bilinear in zero point and normal score; (n, n_draws)."""
+    i, wi = _zero_place(zero)
     up = np.clip((score - U_NODES[0]) / (U_NODES[1] - U_NODES[0]), 0, U_NODES.size - 1)
     j = np.minimum(up.astype(int), U_NODES.size - 2)
-    wi, wj = at - i, up - j
+    wj = up - j
     halo = np.arange(len(table))[:, None]
     r = relation.index
     lower = (1 - wj) * table[halo, r, i, j] + wj * table[halo, r, i, j + 1]

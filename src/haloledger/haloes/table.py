@@ -19,10 +19,11 @@ class Haloes:
     z: np.ndarray  # as listed; from the distance where only that is known
     z_err: np.ndarray
     photometric: np.ndarray  # bool
+    z_outlier: np.ndarray  # share of outliers among photometric redshifts like this one
     distance_mpc: np.ndarray  # luminosity distance, NaN where none
     distance_err_mpc: np.ndarray
     log_mstar: np.ndarray  # NaN for groups
-    p_member: np.ndarray  # probability that a listed group holds this galaxy: then it has no halo of its own
+    p_member: np.ndarray  # probability that it is no centre of a halo of its own: a satellite
     centre_err_kpc: np.ndarray  # 1 sigma per axis
     note: np.ndarray
     # how the mass is known
@@ -38,6 +39,7 @@ class Haloes:
     one_minus_b_err: np.ndarray
     catalogue: np.ndarray  # int: place of the catalogue among the user's
     precedence: np.ndarray  # int: lower gives centre and mass where two catalogues name one halo
+    p_hosted: np.ndarray  # part of p_member: in those draws the row stands for a host that no list has, off its place
     listed_group: np.ndarray  # "label:id" of the group the catalogue puts this galaxy in, "" where none
     notes: tuple[str, ...] = ()
 
@@ -55,7 +57,8 @@ class HaloDraws:
     log_c_offset: np.ndarray  # dex
     centre_east_kpc: np.ndarray
     centre_north_kpc: np.ndarray
-    own: np.ndarray  # bool: has a halo of its own in this draw
+    own: np.ndarray  # bool: there is a halo: its own, or in its stead a host that no list has
+    hosted: np.ndarray  # bool: mass and centre are those of such a host
 
 
 def rows(haloes: Haloes, index) -> Haloes:

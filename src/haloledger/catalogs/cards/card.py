@@ -51,6 +51,7 @@ class Redshift:
     error: float = 0.0
     error_per_one_plus_z: float = 0.0
     taken_as: str = "likelihood"
+    outliers: float = 0.05  # share of outliers among photometric redshifts of galaxies; 3 to 10%: common practice
     source: str = ""
 
 

@@ -63,6 +63,8 @@ def _redshift(card: Card) -> list[str]:
             f" b = {apex.b_deg:g} ({apex.source})"
         )
     words += f"; used as a {r.taken_as}"
+    if r.kind == "phot" and card.kind == "galaxies":
+        words += f"; {100 * r.outliers:g}% taken as outliers"
     size = " + ".join(
         [f"{r.error:g}"] * bool(r.error) + [f"{r.error_per_one_plus_z:g} (1+z)"] * bool(r.error_per_one_plus_z)
     )
