@@ -8,18 +8,25 @@ from dataclasses import dataclass
 from types import ModuleType
 
 from haloledger.catalogs import read_bursts, read_footprint, read_galaxies, read_groups
+from haloledger.catalogs.by_hand import ByHand, apply_overrides
 from haloledger.catalogs.canonical import Bursts, Galaxies, Groups
+from haloledger.catalogs.local_volume import local_groups
+from haloledger.catalogs.overrides import Overrides, read_overrides
+from haloledger.cosmos.background import Cosmos
 from haloledger.cosmos.background import cosmology as named_cosmology
 from haloledger.engine.universe import Universe
 from haloledger.errors import InputError
 from haloledger.gas.models import Model, load_model
 from haloledger.haloes.build import Haloes, halo_list
+from haloledger.ledger.by_hand import gas_by_hand, haloes_by_hand
 from haloledger.ledger.ledgers import Ledgers as LedgerTables
 from haloledger.ledger.ledgers import entries_table, entry_draws_frame, sightlines_table, term_draws_frame
 from haloledger.ledger.nuisances import checked
 from haloledger.ledger.sightline_ledger import Ground, Ledger, make_ledger, prepare
 from haloledger.report.run_record import run_record
 from haloledger.sightlines.electron_model import electron_model
+from haloledger.sightlines.host import with_unknown_hosts
+from haloledger.sightlines.local import uncovered, with_local
 
 Progress = Callable[[int, int, str], None]
 
@@ -53,6 +60,7 @@ class Inputs:
     galaxies: list[Galaxies]
     groups: list[Groups]
     footprints: list
+    overrides: Overrides
 
 
 def audit(
@@ -67,6 +75,9 @@ def audit(
     fixed: bool = False,
     hold: Mapping[str, str] | None = None,
     disc: str = "plane",
+    overrides=None,
+    local: bool = True,
+    source_in_sum: bool = False,
     keep_draws: bool = False,
     progress: Progress | None = None,
 ) -> Ledgers:
@@ -77,6 +88,9 @@ def audit(
     draws      number of universes; `fixed` makes it one and switches every spread and nuisance off
     hold       nuisance name -> value: fixes one global nuisance
     disc       Milky Way disc where the table gives none: "plane", or a published electron model ("ne2001", "ne2025")
+    overrides  changes by hand: a TOML file, or a list of dictionaries with its keys
+    local      the nearest large haloes from the built-in table, where no catalogue given covers them
+    source_in_sum  haloes that the burst sits in count in the foreground sum
     progress   called with (done, total, what)
     Raises InputError, with what to do next, before any work where the input cannot be used.
     """
@@ -87,11 +101,22 @@ def audit(
     cosmos = named_cosmology(cosmology)
     electrons = electron_model(disc)
     tell(0, 1, "reading")
-    inputs = _read(bursts, galaxies, groups, footprints)
+    inputs = _read(bursts, galaxies, groups, footprints, overrides)
+    own_models = {m: load_model(m) for m in inputs.overrides.models}
     tell(0, 1, "one list of haloes")
-    haloes = halo_list(inputs.galaxies, inputs.groups, cosmos)
+    hand = apply_overrides(
+        inputs.overrides,
+        inputs.bursts,
+        inputs.galaxies,
+        [*([local_groups()] if local else []), *inputs.groups],
+        cosmos.luminosity_distance_mpc,
+    )
+    haloes = _haloes(hand, local, cosmos)
     tell(0, 1, "tables of the halo models")
-    ground = prepare(inputs.bursts, haloes, gas, inputs.footprints, universe, cosmos, electrons)
+    sightlines = with_unknown_hosts(hand.bursts, [*hand.galaxies, *hand.groups])
+    own_gas = gas_by_hand(haloes, hand.rows, own_models)
+    footprints_read = inputs.footprints
+    ground = prepare(sightlines, haloes, gas, footprints_read, universe, cosmos, electrons, source_in_sum, own_gas)
     ledgers = _all_ledgers(ground, tell, keep_draws)
     options = {
         "models": [str(m) for m in models],
@@ -101,9 +126,13 @@ def audit(
         "fixed": fixed,
         "hold": dict(universe.held),
         "disc": disc,
+        "local": local,
+        "source_in_sum": source_in_sum,
     }
     given = {"bursts": [bursts], "galaxies": galaxies, "groups": groups, "footprints": footprints}
-    return _gather(ledgers, inputs, haloes, gas, run_record(options, given, gas))
+    given["overrides"] = [] if overrides is None else [overrides]
+    run = run_record(options, given, [*gas, *(m for m in own_models.values() if m not in gas)])
+    return _gather(ledgers, inputs, hand, haloes, gas, run | ({"by_hand": hand.record} if hand.record else {}))
 
 
 def _check_numbers(draws: int, seed: int, models: Sequence[str]) -> None:
@@ -115,12 +144,24 @@ def _check_numbers(draws: int, seed: int, models: Sequence[str]) -> None:
         raise InputError("no halo model given. Write at least one --model, for instance --model blended.")
 
 
-def _read(bursts, galaxies, groups, footprints) -> Inputs:
+def _haloes(hand: ByHand, local: bool, cosmos: Cosmos) -> Haloes:
+    """One list of haloes from the catalogues and, where none covers them, the nearest ones."""
+    if local:
+        nearest, *groups = hand.groups
+        nearest = uncovered(nearest, hand.galaxies, groups, cosmos)
+        haloes = with_local(hand.galaxies, groups, nearest, cosmos)
+    else:
+        haloes = halo_list(hand.galaxies, hand.groups, cosmos)
+    return haloes_by_hand(haloes, hand.rows, cosmos)
+
+
+def _read(bursts, galaxies, groups, footprints, overrides) -> Inputs:
     return Inputs(
         bursts=read_bursts(bursts),
         galaxies=[read_galaxies(g) for g in galaxies],
         groups=[read_groups(g) for g in groups],
         footprints=[read_footprint(f) for f in footprints],
+        overrides=read_overrides(overrides),
     )
 
 
@@ -134,14 +175,16 @@ def _all_ledgers(ground: Ground, tell: Progress, keep_draws: bool) -> list[Ledge
     return ledgers
 
 
-def _gather(ledgers: list[Ledger], inputs: Inputs, haloes: Haloes, gas: list[Model], run: dict) -> Ledgers:
+def _gather(
+    ledgers: list[Ledger], inputs: Inputs, hand: ByHand, haloes: Haloes, gas: list[Model], run: dict
+) -> Ledgers:
     catalogues: list[Galaxies | Groups] = [*inputs.galaxies, *inputs.groups]
-    refused = [*inputs.bursts.refused, *(r for c in catalogues for r in c.refused)]
-    notes = [*inputs.bursts.notes, *(n for c in catalogues for n in c.notes), *haloes.notes]
+    refused = [*inputs.bursts.refused, *(r for c in catalogues for r in c.refused), *hand.refused]
+    notes = [*inputs.bursts.notes, *(n for c in catalogues for n in c.notes), *haloes.notes, *hand.notes]
     return Ledgers(
         sightlines=sightlines_table([ledger.row for ledger in ledgers]),
         entries=entries_table([row for ledger in ledgers for row in ledger.entries]),
-        bursts=inputs.bursts,
+        bursts=hand.bursts,
         models=gas,
         refused=refused,
         run=run,

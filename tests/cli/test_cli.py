@@ -120,8 +120,13 @@ def test_options_reach_the_function(asked):
         "fixed": True,
         "hold": {"zero_point": "0", "relation": "moster2013"},
         "disc": "ne2001",
+        "overrides": None,
+        "local": True,
+        "source_in_sum": False,
         "keep_draws": False,
     }
+    run("audit", "b.csv", "--no-local", "--source-in-sum", "--overrides", "o.toml")
+    assert (asked["local"], asked["source_in_sum"], asked["overrides"]) == (False, True, "o.toml")
 
 
 def test_every_option_is_an_argument_of_the_function(asked):

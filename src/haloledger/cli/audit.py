@@ -36,6 +36,8 @@ def _held(ctx: click.Context, parameter: click.Parameter, values: tuple[str, ...
 @option("--galaxies", group=INPUT, multiple=True, metavar="[CARD:]FILE", help="Galaxy table; may be repeated.")
 @option("--groups", group=INPUT, multiple=True, metavar="[CARD:]FILE", help="Group or cluster table; may be repeated.")
 @option("--footprint", group=INPUT, multiple=True, metavar="FILE", help="Where the tables look; may be repeated.")
+@option("--overrides", group=INPUT, metavar="FILE", help="Changes by hand, each with its reason; TOML.")
+@option("--no-local", group=INPUT, is_flag=True, help="Leave the built-in nearest haloes (M31, M81, ...) away.")
 @option("--model", group=GAS, multiple=True, metavar="NAME|FILE", help="Halo model; may be repeated, first in full.")
 @option("--draws", group=GAS, type=click.IntRange(min=1), default=1000, show_default=True, help="Universes to draw.")
 @option("--seed", group=GAS, type=click.IntRange(min=0), default=1, show_default=True, help="Seed of all draws.")
@@ -50,6 +52,7 @@ def _held(ctx: click.Context, parameter: click.Parameter, values: tuple[str, ...
     show_default=True,
     help="Milky Way disc where the table has no dm_disc.",
 )
+@option("--source-in-sum", group=GAS, is_flag=True, help="Haloes the burst sits in count as foreground.")
 @option("--out", group=OUTPUT, metavar="DIR", help="Folder for the tables; without it, results go to the screen only.")
 @option(
     "--format",
@@ -89,7 +92,12 @@ def _check_output(out: str | None, table_format: str, figures: bool, keep_draws:
 
 def _for_python(asked: dict[str, Any]) -> dict[str, Any]:
     """Options under the names of `haloledger.audit.audit`; its default models where none is named."""
-    asked = {"footprints": asked.pop("footprint"), "models": asked.pop("model"), **asked}
+    renamed = {
+        "footprints": asked.pop("footprint"),
+        "models": asked.pop("model"),
+        "local": not asked.pop("no_local"),
+    }
+    asked = renamed | asked
     if not asked["models"]:
         del asked["models"]
     return asked

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, fields
 from functools import cached_property
 
 import numpy as np
@@ -47,6 +47,10 @@ class Crossing:
     def impact_r200c(self) -> np.ndarray:
         """Impact parameter over r200c."""
         return self.impact_kpc / self.r200c_kpc
+
+    def rows(self, index) -> Crossing:
+        """The haloes at the places `index` of this crossing."""
+        return Crossing(**{f.name: getattr(self, f.name)[index] for f in fields(self)})
 
     @property
     def halo_modelled(self) -> np.ndarray:

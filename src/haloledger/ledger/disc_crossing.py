@@ -60,9 +60,7 @@ def disc_notes(haloes: Haloes, crossing: Crossing, discs: Discs) -> list[str]:
         f" ({(discs.dm[i] > 0).mean():.0%} of draws)"
         for i in crossed[np.argsort(-discs.dm[crossed].mean(axis=1), kind="stable")]
     ]
-    return [
-        f"disc crossing: {', '.join(names)}; its interstellar medium is dm_disc_crossing, in no halo or cosmic term"
-    ]
+    return [f"disc crossing: {', '.join(names)}; its interstellar medium is dm_disc_crossing, apart from all haloes"]
 
 
 def _is_galaxy(haloes: Haloes, index: np.ndarray) -> np.ndarray:

@@ -3,8 +3,9 @@
 from __future__ import annotations
 
 import itertools
-from collections.abc import Callable
-from dataclasses import dataclass
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass, field
+from functools import cache
 
 import numpy as np
 
@@ -15,7 +16,9 @@ from haloledger.gas.models import Model
 from haloledger.haloes.build import Haloes, mass_ceiling, point_mass
 from haloledger.haloes.distances import point_redshift, z_floor
 from haloledger.haloes.draws import relation_notes
+from haloledger.haloes.table import rows
 from haloledger.ledger.budget import Ends, budget
+from haloledger.ledger.by_hand import OwnGas
 from haloledger.ledger.crossing import Crossing, cross
 from haloledger.ledger.disc_crossing import cross_discs, disc_notes
 from haloledger.ledger.entries import halo_dm
@@ -63,6 +66,7 @@ class Ground:
     shared: list[np.ndarray]
     deepest: np.ndarray  # redshift to which each mass bin of the census is listed
     source_in_sum: bool = False  # haloes that hold the burst count in its foreground sum
+    own_gas: Mapping[str, OwnGas] = field(default_factory=dict)  # halo id -> gas set by hand
 
 
 @dataclass(frozen=True)
@@ -86,20 +90,25 @@ def prepare(
     cosmos: Cosmos,
     electrons,
     source_in_sum: bool = False,
+    own_gas: Mapping[str, OwnGas] | None = None,
 ) -> Ground:
     """Everything that is made once: who is near whom, and each model's census."""
+    own_gas = own_gas or {}
+    listed = rows(haloes, np.flatnonzero(haloes.kind != LOCAL))
+    models = [*gas, *(own.model for own in own_gas.values() if own.model is not None)]
     return Ground(
         bursts=bursts,
         haloes=haloes,
-        near=_near(bursts, haloes, max(m.boundary_r200c for m in gas), cosmos),
+        near=_near(bursts, haloes, max(m.boundary_r200c for m in models), cosmos),
         gas=[_gas_ground(m, universe, cosmos) for m in gas],
         footprints=footprints,
         universe=universe,
         cosmos=cosmos,
         electrons=electrons,
         shared=shared_columns(universe),
-        deepest=deepest_by_mass(point_mass(haloes, cosmos), point_redshift(haloes, cosmos)),
+        deepest=deepest_by_mass(point_mass(listed, cosmos), point_redshift(listed, cosmos)),
         source_in_sum=source_in_sum,
+        own_gas=own_gas,
     )
 
 
@@ -112,16 +121,21 @@ def make_ledger(ground: Ground, i: int, keep_draws: bool = False) -> list[Ledger
     if outside and (ground.haloes.kind[index] != LOCAL).any():
         outside, said = False, "outside every footprint given, yet haloes are listed near: not all lists have one"
     note = [*note, said, *relation_notes(ground.haloes, index, ground.universe)]
-    crossings: dict[str | float, Crossing] = {}
+
+    @cache
+    def crossing_for(relation: str | float) -> Crossing:
+        return _cross(ground, i, sightline, index, relation)
+
     ledgers = []
     for gas in ground.gas:
-        relation = gas.model.concentration
-        if relation not in crossings:
-            crossings[relation] = _cross(ground, i, sightline, index, relation)
-        crossing = crossings[relation]
+        crossing = crossing_for(gas.model.concentration)
         host, host_said = host_obs(ground.bursts, i, sightline.z, ground.universe, crossing.halo_modelled)
-        ends, said = Ends(*milky_way, host), [*note, host_said]
-        ledgers.append(_one_model(ground, gas, sightline, ends, crossing, outside, said, keep_draws))
+        dm, models = _halo_gas(ground, gas.model, crossing, crossing_for)
+        discs = cross_discs(sightline, ground.haloes, crossing, ground.universe, ground.cosmos)
+        held = Gas(dm, discs.dm, ~crossing.at_source | ground.source_in_sum, models)
+        notes = [*note, host_said, *disc_notes(ground.haloes, crossing, discs)]
+        ends = Ends(*milky_way, host)
+        ledgers.append(_one_model(ground, gas, sightline, ends, crossing, held, outside, notes, keep_draws))
     return ledgers
 
 
@@ -190,20 +204,31 @@ def _cross(ground: Ground, i: int, sightline: Sightline, index: np.ndarray, rela
     return cross(sightline, ground.haloes, index, inside, relation, ground.universe, ground.cosmos)
 
 
+def _halo_gas(ground: Ground, model: Model, crossing: Crossing, crossing_for) -> tuple[np.ndarray, list[Model]]:
+    """DM draws of all haloes (n_haloes, n_draws) and the model behind each: the ledger's, or one set by hand."""
+    ids = ground.haloes.id[crossing.index]
+    dm, models = halo_dm(crossing, ids, model, ground.universe, ground.cosmos), [model] * len(ids)
+    for k in [k for k, name in enumerate(ids.tolist()) if str(name) in ground.own_gas]:
+        own = ground.own_gas[str(ids[k])]
+        if own.model is not None:
+            one = crossing_for(own.model.concentration).rows(np.array([k]))
+            dm[k], models[k] = halo_dm(one, ids[k : k + 1], own.model, ground.universe, ground.cosmos)[0], own.model
+        dm[k] *= own.kept_factor
+    return dm, models
+
+
 def _one_model(
     ground: Ground,
     gas: GasGround,
     sightline: Sightline,
     ends: Ends,
     crossing: Crossing,
+    held: Gas,
     outside: bool,
     note: list[str],
     keep_draws: bool,
 ) -> Ledger:
-    ids = ground.haloes.id[crossing.index]
-    dm = halo_dm(crossing, ids, gas.model, ground.universe, ground.cosmos)
-    discs = cross_discs(sightline, ground.haloes, crossing, ground.universe, ground.cosmos)
-    in_sum = ~crossing.at_source | ground.source_in_sum
+    ids, dm, in_sum = ground.haloes.id[crossing.index], held.dm, held.in_sum
     crossed = dm[in_sum] > 0
     reach = reach_bounds(float(np.median(sightline.z)), gas.census, ground.deepest, outside)
     terms = budget(
@@ -211,7 +236,7 @@ def _one_model(
         ends,
         dm[in_sum].sum(axis=0),
         dm[~in_sum].sum(axis=0),
-        discs.dm.sum(axis=0),
+        held.disc.sum(axis=0),
         gas.census,
         gas.census_factor,
         gas.width,
@@ -219,8 +244,7 @@ def _one_model(
         ground.universe,
         ground.cosmos,
     )
-    said = [*note, *_model_notes(gas, sightline), *disc_notes(ground.haloes, crossing, discs)]
-    held = Gas(dm, discs.dm, in_sum, [gas.model] * len(dm))
+    said = [*note, *_model_notes(gas, sightline)]
     row = sightline_row(
         sightline,
         gas.model,

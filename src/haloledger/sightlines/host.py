@@ -2,6 +2,9 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+from dataclasses import replace
+
 import numpy as np
 
 from haloledger.catalogs.canonical import Bursts
@@ -41,6 +44,22 @@ def is_host(bursts: Bursts, i: int, haloes: Haloes, index: np.ndarray, cosmos: C
     error = np.sqrt(haloes.z_err[index] ** 2 + np.nan_to_num(bursts.z_err[i]) ** 2 + (PECULIAR_KMS / LIGHT_KMS) ** 2)
     fits = (haloes.kind[index] == "galaxy") & (apart <= radius) & (gap <= 3 * error)
     return fits & (apart <= np.min(apart[fits], initial=np.inf))
+
+
+def with_unknown_hosts(bursts: Bursts, catalogues: Sequence) -> Bursts:
+    """The bursts, with a note on those whose host_id is a row of no catalogue: that host is sought by place."""
+    wanted = {str(h) for h in bursts.host} - {""}
+    if not wanted:
+        return bursts
+    full = {str(name) for table in catalogues for name in table.row}
+    unknown = wanted - full - {name.split(":", 1)[-1] for name in full}
+    if not unknown:
+        return bursts
+    note = bursts.note.astype(object)
+    for i in np.flatnonzero(np.isin(np.asarray(bursts.host, dtype=str), sorted(unknown))):
+        said = f"host_id '{bursts.host[i]}' is in no catalogue given: the host is sought by position and redshift"
+        note[i] = f"{note[i]}; {said}" if note[i] else said
+    return replace(bursts, note=note)
 
 
 def holds_burst(
