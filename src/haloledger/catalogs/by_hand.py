@@ -136,6 +136,9 @@ def _changed(table: Any, i: int, sets: dict[str, Any], luminosity_mpc: Callable)
     if "z" in sets:
         if "log_mstar" in new and table.z[i] > 0 and sets["z"] > 0 and np.isnan(table.distance_mpc[i]):
             new["log_mstar"][i] += 2 * np.log10(luminosity_mpc(sets["z"]) / luminosity_mpc(table.z[i]))
+        if getattr(table, "z_flow", None) is not None:  # the frame's motion stays what it is in that direction
+            new["z_flow"] = np.array(table.z_flow)
+            new["z_flow"][i] = (1 + sets["z"]) * _frame_factor(table, i) - 1
         new["z"][i], new["z_err"][i] = sets["z"], sets.get("z_err", 0.0)
         new["photometric"][i] = sets.get("z_err", 0.0) > SHARP_Z_ERR
         new["distance_mpc"][i] = new["distance_err_mpc"][i] = np.nan
@@ -153,6 +156,11 @@ def _changed(table: Any, i: int, sets: dict[str, Any], luminosity_mpc: Callable)
         new["mass_def"] = np.array(table.mass_def, dtype=object)
         new["mass_def"][i] = "200c"
     return replace(table, **new)
+
+
+def _frame_factor(table: Any, i: int) -> float:
+    factor = (1 + table.z_flow[i]) / (1 + table.z[i])
+    return float(factor) if np.isfinite(factor) else 1.0
 
 
 def _add(hand: ByHand, kind: str, several: list[Override]) -> None:

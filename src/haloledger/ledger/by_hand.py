@@ -6,10 +6,11 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from haloledger.catalogs.by_hand import SHARP_Z_ERR
 from haloledger.catalogs.overrides import Override
 from haloledger.cosmos.background import Cosmos
 from haloledger.gas.models import Model
-from haloledger.haloes.table import Haloes, change
+from haloledger.haloes.table import COLUMNS, Haloes, change
 
 
 @dataclass(frozen=True)
@@ -24,7 +25,7 @@ def haloes_by_hand(haloes: Haloes, rows: dict[str, list[Override]], cosmos: Cosm
     """The haloes with notes, masses and redshifts of their changed rows, also where another row describes the halo."""
     if not rows:
         return haloes
-    columns = {name: getattr(haloes, name).copy() for name in _TOUCHED}
+    columns = {name: getattr(haloes, name).copy() for name in _TOUCHED if name in COLUMNS}
     columns["note"] = columns["note"].astype(object)
     columns["mass_kind"] = columns["mass_kind"].astype(object)
     for i, name in _haloes_of(haloes, rows):
@@ -48,7 +49,7 @@ def gas_by_hand(haloes: Haloes, rows: dict[str, list[Override]], models: dict[st
 
 _TOUCHED = (
     *("note", "mass_kind", "value", "value_err", "posterior", "one_minus_b", "one_minus_b_err", "log_mstar"),
-    *("z", "z_err", "distance_mpc", "distance_err_mpc"),
+    *("z", "z_err", "z_flow", "photometric", "distance_mpc", "distance_err_mpc"),
 )
 
 
@@ -72,7 +73,10 @@ def _set(columns: dict[str, np.ndarray], i: int, each: Override, described: bool
             step = 2 * np.log10(far[0] / far[1])
             columns["value"][i] += step
             columns["log_mstar"][i] += step
+        if "z_flow" in columns and np.isfinite(columns["z_flow"][i]):
+            columns["z_flow"][i] = (1 + sets["z"]) * (1 + columns["z_flow"][i]) / (1 + columns["z"][i]) - 1
         columns["z"][i], columns["z_err"][i] = sets["z"], sets.get("z_err", 0.0)
+        columns["photometric"][i] = sets.get("z_err", 0.0) > SHARP_Z_ERR
         columns["distance_mpc"][i] = columns["distance_err_mpc"][i] = np.nan
     if "distance_mpc" in sets:
         columns["distance_mpc"][i] = sets["distance_mpc"]

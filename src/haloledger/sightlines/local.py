@@ -24,7 +24,7 @@ def uncovered(local: Groups, galaxies: list[Galaxies], groups: list[Groups], cos
     """The rows of the built-in table that no catalogue covers.
 
     Covered: a listed halo within 0.6 r200c or 0.5 deg of the centre, at a distance (or velocity, 500 km/s) that agrees,
-    of a mass within 1 dex.
+    of a mass within 1 dex. A satellite is covered with the halo it lies in.
     """
     if not len(local):
         return local
@@ -36,7 +36,9 @@ def uncovered(local: Groups, galaxies: list[Galaxies], groups: list[Groups], cos
         make = galaxy_haloes if isinstance(near, Galaxies) else group_haloes
         if len(near):
             covered |= _covered_by(table, radius, make(near, 1, cosmos), cosmos)
-    return take(local, np.isin(local.row, table.id[~covered].astype(str)))
+    names = set(table.id[covered].astype(str))
+    names |= {h.row for h in local_volume() if f"{LABEL}:{h.inside}" in names}
+    return take(local, ~np.isin(local.row, sorted(names)))
 
 
 def with_local(galaxies: list[Galaxies], groups: list[Groups], local: Groups, cosmos: Cosmos) -> Haloes:
