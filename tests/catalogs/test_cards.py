@@ -320,7 +320,7 @@ def test_kourkchi_tully_native(tmp_path):
     lon, lat = np.radians(283.74), np.radians(74.49)  # galactic coordinates of RA 187.7, Dec 12.4
     sun = -26 * np.cos(lon) * np.cos(lat) + 317 * np.sin(lon) * np.cos(lat) - 8 * np.sin(lat)
     assert got.z[0] * C_KM_S == pytest.approx(1242 - sun, abs=0.2)  # positions rounded to 0.01 degree and less
-    assert set(got.mass_def) == {"vir"}
+    assert set(got.mass_def) == {"200c"}
 
 
 def test_mcxc_native():

@@ -75,3 +75,17 @@ def test_local_sheet_velocities_against_heliocentric_ones(shared_data):
     ours = to_heliocentric(vls / C_KM_S, ra, dec, "local sheet", "velocities")[pair] * C_KM_S
     # other measurements of the same galaxy differ; the typical one agrees to the rounding of both tables
     assert np.median(np.abs(ours - v_h[near][pair])) < 2.0
+
+
+def test_cmb_frame_of_a_card_and_of_a_bare_table():
+    from astropy.table import Table
+
+    from haloledger.catalogs import read_galaxies
+    from haloledger.catalogs.frames import to_cmb
+
+    # the apex itself, l = 264.021, b = 48.253: 167.94, -6.94; there the Sun's 369.82 km/s are taken off in full
+    assert to_cmb(np.array([0.0]), np.array([167.942]), np.array([-6.944]))[0] * 299792.458 == pytest.approx(
+        369.82, abs=0.01
+    )
+    bare = Table({"id": ["a"], "ra": [10.0], "dec": [20.0], "z": [0.01], "log_mstar": [10.0]})
+    assert read_galaxies(bare).z_flow is None

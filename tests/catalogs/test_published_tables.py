@@ -192,7 +192,7 @@ def test_kourkchi_tully(real, shared_data):
     np.testing.assert_allclose(got.distance_err_mpc, error, rtol=1e-12)
     # where there is no measured distance, `dist` is a velocity over 75
     assert np.abs(d - vls / 75)[keep & (md == 0)].max() < 1.01
-    assert set(got.mass_def) == {"vir"}
+    assert set(got.mass_def) == {"200c"}
 
 
 def test_mcxc(real, shared_data):

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 
@@ -55,12 +57,16 @@ def test_rows_of_one_catalogue_stay_apart(make_groups, planck):
     assert len(halo_list([], [groups], planck)) == 2
 
 
-def test_second_row_of_a_catalogue_is_not_the_same_halo(make_groups, planck):
-    # b lists two comparable haloes where a lists one: one of them is a's, the other stays
+@pytest.mark.parametrize(
+    ("ra", "expected"),
+    [(150.16, ["a:000000;b:000000", "b:000001"]), (150.06, ["a:000000;b:000000;b:000001"])],
+)
+def test_second_row_of_a_catalogue_is_another_halo_or_a_part(ra, expected, make_groups, planck):
+    # b lists two comparable haloes where a lists one (r200c 0.2 degrees): a halo of its own outside half of r200c, a
+    # part of a's inside it
     a = make_groups("a", 1, ra_deg=150.0, dec_deg=2.0, z=0.1, log_mass=14.5)
-    b = make_groups("b", 2, ra_deg=np.array([150.01, 150.1]), dec_deg=2.0, z=0.1, log_mass=np.array([14.4, 14.2]))
-    haloes = halo_list([], [a, b], planck)
-    assert haloes.source_rows.tolist() == ["a:000000;b:000000", "b:000001"]
+    b = make_groups("b", 2, ra_deg=np.array([150.01, ra]), dec_deg=2.0, z=0.1, log_mass=np.array([14.4, 14.2]))
+    assert halo_list([], [a, b], planck).source_rows.tolist() == expected
 
 
 def test_own_catalogue_keeps_a_clump_apart_though_another_makes_it_a_part(make_groups, planck):
@@ -87,12 +93,49 @@ def test_photometric_cluster_joins_the_spectroscopic_one(make_groups, planck):
 
 
 def test_distances_part_what_velocities_cannot(make_groups, planck):
-    # two groups along one line, both moving at 1,100 km/s, at 16 and 24 Mpc with 5 per cent errors
+    # two groups 0.2 degrees apart, both moving at 1,100 km/s, at 16 and 28 Mpc with 5 per cent errors: 5 of them
     columns = {"z": 1100 * KMS, "log_mass": 13.0}
     a = make_groups("a", 1, distance_mpc=16.0, distance_err_mpc=0.8, **columns)
-    b = make_groups("b", 1, distance_mpc=24.0, distance_err_mpc=1.2, **columns)
-    assert len(halo_list([], [a, b], planck)) == 2
-    assert len(halo_list([], [a, take(b, [0]).__class__(**{**vars(b), "distance_mpc": np.array([17.0])})], planck)) == 1
+    for ra, mpc, left in ((150.2, 28.0, 2), (150.2, 20.0, 1), (150.005, 28.0, 1)):
+        b = make_groups("b", 1, ra_deg=ra, distance_mpc=mpc, distance_err_mpc=0.05 * mpc, **columns)
+        # at one place and speed they are one object, whatever the distances say
+        assert len(halo_list([], [a, b], planck)) == left, (ra, mpc)
+
+
+def test_galaxy_and_its_group_of_one_at_other_distances_are_one_halo(make_galaxies, make_groups, planck):
+    # NGC 3557 stands at 46 Mpc in one list and at 31 in another
+    group = make_groups("kt", 1, z=0.0095, log_mass=12.9, distance_mpc=31.0, distance_err_mpc=2.0, n_members=1)
+    galaxy = make_galaxies("g", 1, ra_deg=150.003, z=0.0096, z_err=2e-4, log_mstar=11.2, distance_mpc=46.0)
+    haloes = halo_list([galaxy], [group], planck)
+    assert haloes.id.tolist() == ["kt:000000"]
+    assert haloes.members.tolist() == ["g:000000"]
+
+
+def test_redshifts_of_concentric_clusters_may_differ_by_more(make_groups, planck):
+    # 4 sigma: photometric 0.21 +- 0.007 at the place of an X-ray cluster at 0.18; beside it the two stay apart
+    for ra, left in ((150.01, 1), (150.08, 2)):
+        xray = make_groups("x", 1, z=0.18, log_mass=14.6)
+        optical = make_groups("o", 1, ra_deg=ra, z=0.213, z_err=0.0072, photometric=True, log_mass=14.4)
+        assert len(halo_list([], [xray, optical], planck)) == left, ra
+
+
+def test_centre_errors_are_cut_at_a_share_of_the_halo(make_groups, planck):
+    groups = make_groups("c", 2, ra_deg=np.array([10.0, 90.0]), log_mass=np.array([11.3, 14.0]), centre_err_kpc=50.0)
+    whole = halo_list([], [groups], planck).centre_err_kpc
+    cut = halo_list([], [replace(groups, centre_err_share=0.15)], planck).centre_err_kpc
+    assert whole.tolist() == [50.0, 50.0]
+    assert cut[0] == pytest.approx(0.15 * planck.r200c_kpc(11.3, 0.1))
+    assert cut[1] == 50.0
+
+
+def test_group_too_slow_for_a_distance_is_left_out_or_takes_one(make_groups, planck):
+    slow = make_groups("s", 1, z=0.0006, sigma_v_kms=80.0, n_members=4, proxy="sigma_v")
+    far = make_groups("f", 1, ra_deg=20.0, log_mass=13.0)
+    haloes = halo_list([], [slow, far], planck)
+    assert haloes.id.tolist() == ["f:000000"]
+    assert any("Groups below 600 km/s without a distance" in n and "distance_mpc" in n for n in haloes.notes)
+    known = make_groups("k", 1, z=0.0007, log_mass=12.6, distance_mpc=3.5, distance_err_mpc=0.2)
+    assert halo_list([], [slow, known], planck).source_rows.tolist() == ["k:000000;s:000000"]
 
 
 def test_members_add_no_halo_and_background_galaxies_keep_theirs(make_galaxies, make_groups, planck):
@@ -152,10 +195,13 @@ def test_photometric_member_is_drawn(make_galaxies, make_groups, planck):
     assert np.all(drawn.own[haloes.kind == "group"])
 
 
-def test_giant_beside_a_small_group_keeps_its_halo(make_galaxies, make_groups, planck):
+@pytest.mark.parametrize(("ra", "left"), [(150.04, 2), (150.005, 1)])
+def test_giant_beside_a_small_group_keeps_its_halo_unless_it_is_the_group(ra, left, make_galaxies, make_groups, planck):
     group = make_groups("c", 1, z=0.02, log_mass=11.0, log_mass_err=0.1)
-    galaxies = make_galaxies("g", 1, z=0.02, z_err=1e-4, ra_deg=150.01, log_mstar=11.3)
-    assert len(halo_list([galaxies], [group], planck)) == 2
+    galaxies = make_galaxies("g", 1, z=0.02, z_err=1e-4, ra_deg=ra, log_mstar=11.3)
+    haloes = halo_list([galaxies], [group], planck)
+    assert len(haloes) == left
+    assert ("g:000000 at its centre is a galaxy of a heavier halo" in haloes.note[0]) == (left == 1)
 
 
 def test_one_galaxy_of_two_catalogues(make_galaxies, planck):

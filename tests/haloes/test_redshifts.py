@@ -211,3 +211,20 @@ def test_outliers_are_searched_at_lower_redshift(make_galaxies, planck):
         z_outlier=0.05,
     )
     assert z_floor(halo_list([galaxies], [], planck), planck) == pytest.approx([0.12, 0.27], abs=5e-3)
+
+
+def test_distance_follows_the_flow_and_comparisons_the_listed_redshift(make_galaxies, planck):
+    galaxies = make_galaxies("g", 1, z=0.006, z_err=1e-4, log_mstar=9.5, z_flow=np.array([0.0072]))
+    haloes = halo_list([galaxies], [], planck)
+    assert haloes.z[0] == 0.006
+    drawn = draw_haloes(haloes, [0], Universe(fixed=True), "dutton2014", planck)
+    assert drawn.z[0, 0] == 0.0072
+    assert drawn.distance_kpc[0, 0] == pytest.approx(planck.angular_distance_kpc(0.0072))
+
+
+def test_group_near_the_observer_is_drawn_with_volume(make_groups, planck):
+    groups = make_groups("s", 1, z=0.0025, z_err=3e-4, log_mass=12.5, log_mass_err=0.2)
+    z = draws(None, planck, groups=[groups]).z
+    floor = 0.3 * 0.0025
+    assert np.mean(z <= floor * 1.001) < 1e-3  # nothing piles up there
+    assert z.mean() > 0.0027

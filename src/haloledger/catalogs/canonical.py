@@ -46,6 +46,7 @@ class Galaxies:
     ]  # canonical band ("g","r","i","z","ks","w1") -> apparent magnitude, system as in `mag_system`
     mag_system: dict[str, str] = field(default_factory=dict)  # band -> "AB" or "Vega"
     mag_rest: bool = False  # magnitudes are already corrected to the rest frame
+    z_flow: np.ndarray | None = None  # redshift in the CMB frame, for distances; None: z serves
     z_outlier: float = 0.0  # share of outliers among the photometric redshifts
     z_is: str = "likelihood"  # or "posterior": then no volume or mass-function prior is put on z
     mass_is: str = "likelihood"  # of log_mstar; log_m200c is always taken as it stands
@@ -86,6 +87,8 @@ class Groups:
     proxy_relation: str = ""  # name of the relation file for that proxy
     one_minus_b: tuple[float, float] = (1.0, 0.0)  # hydrostatic bias (1-b) and its error; mass is divided by it
     precedence: int = 50  # lower wins when two catalogues list the same halo
+    centre_err_share: float = float("inf")  # centre_err_kpc is at most this share of r200c
+    z_flow: np.ndarray | None = None  # redshift in the CMB frame, for distances; None: z serves
     z_is: str = "likelihood"
     notes: tuple[str, ...] = ()
     refused: tuple[Refusal, ...] = ()

@@ -69,3 +69,8 @@ def to_heliocentric(
     if sum_of == "velocities":
         return z - beta
     return (1 + z) / (1 + beta) - 1
+
+
+def to_cmb(z: np.ndarray, ra_deg: np.ndarray, dec_deg: np.ndarray) -> np.ndarray:
+    """Redshift in the CMB frame from the heliocentric one: what the Hubble flow is measured in."""
+    return (1 + z) * (1 + apex_velocity(ra_deg, dec_deg, "cmb") / C_KM_S) - 1

@@ -11,12 +11,14 @@ from haloledger.catalogs.rows import (
     Rows,
     distance_error,
     error_or_default,
+    flow_redshift,
     photometric_rows,
     redshift_error,
     row_names,
 )
 from haloledger.catalogs.schema import MASS_DEFINITIONS, near
 
+HEAVIEST_CLUSTER = 15.9  # log10 Msun; the heaviest known have 15.5 within r200c: from memory
 # Of several proxies the first is used: X-ray light, then richness, then dynamics. Common practice.
 PROXIES = ("lx", "richness", "sigma_v")
 # Which relation file turns a proxy into a mass where no card names one.
@@ -31,6 +33,12 @@ def groups_from(table: Prepared) -> Groups:
     rows.check_position()
     rows.check_redshift()
     rows.check_log_mass("log_mass", *HALO_MASS_RANGE)
+    rows.refuse(
+        table.number("log_mass") > HEAVIEST_CLUSTER,
+        "log_mass",
+        rows.value("log_mass"),
+        f"More than any cluster, {HEAVIEST_CLUSTER:g}: write log10 of the mass in Msun, without h, or drop the row.",
+    )
     card = table.card
     proxy, relation = _proxy(table)
     mass = table.number("log_mass")
@@ -42,7 +50,7 @@ def groups_from(table: Prepared) -> Groups:
         "z_err": redshift_error(table, photometric, index),
         "log_mass_err": error_or_default(table, "log_mass", "log_mass_err", card.mass.error_dex, index),
         "distance_err_mpc": distance_error(table, index),
-        "centre_err_kpc": np.nan_to_num(table.number("centre_err_kpc"), nan=card.centre.error_kpc),
+        "centre_err_kpc": _centre_error(table),
         "sigma_v_kms": table.number("sigma_v"),
         "n_members": table.number("n_members"),
         "richness": table.number("richness"),
@@ -64,11 +72,21 @@ def groups_from(table: Prepared) -> Groups:
         proxy_relation=relation,
         one_minus_b=(card.mass.one_minus_b[0], card.mass.one_minus_b[1]),
         precedence=card.precedence,
+        centre_err_share=card.centre.largest_share,
+        z_flow=flow_redshift(table, index),
         z_is=card.redshift.taken_as,
         notes=tuple(table.notes),
         refused=rows.refusals(),
         **{name: values[index] for name, values in columns.items()},
     )
+
+
+def _centre_error(table: Prepared) -> np.ndarray:
+    """As given, else the card's; the one galaxy of a group of one is its centre."""
+    centre = table.card.centre
+    single = (table.number("n_members") == 1) & np.isfinite(centre.single_kpc)
+    given = table.number("centre_err_kpc")
+    return np.where(np.isnan(given), np.where(single, centre.single_kpc, centre.error_kpc), given)
 
 
 def _proxy(table: Prepared) -> tuple[str, str]:

@@ -7,6 +7,7 @@ from collections.abc import Callable
 import numpy as np
 
 from haloledger.catalogs.canonical import Refusal
+from haloledger.catalogs.frames import to_cmb
 from haloledger.catalogs.prepare import Prepared
 from haloledger.catalogs.schema import FIELDS
 from haloledger.errors import InputError
@@ -172,6 +173,14 @@ def redshift_error(table: Prepared, photometric: np.ndarray, index: np.ndarray) 
     if table.bare and phot:
         table.notes.append(f"{table.label}: no redshift error in {phot} photometric rows: 0.03 (1+z) is used")
     return np.where(np.isnan(given), default, given)
+
+
+def flow_redshift(table: Prepared, index: np.ndarray) -> np.ndarray | None:
+    """Redshifts for distances: in the CMB frame where a card states the frame, as given (None) in a bare table."""
+    if table.bare:
+        return None
+    z, ra, dec = (table.number(name)[index] for name in ("z", "ra", "dec"))
+    return to_cmb(z, ra, dec)
 
 
 def photometric_rows(rows: Rows) -> np.ndarray:

@@ -33,6 +33,7 @@ from haloledger.haloes.table import Haloes, change, join, rows
 MEDIAN_RELATION = "moster2013"  # for sizes in the search for doubles and members alone
 CEILING_SIGMA = 3.5
 CEILING_DISTANCE = 2.0
+LEAST_FLOW_KMS = 600.0  # two peculiar velocities
 HOST_BEYOND = 1e-3
 OFF_CENTRE_DEX = 3 * np.log10(2.0)  # (boundary + 1) r200c of the host, at most twice its boundary of one r200c or more
 SAID_UNLISTED = 0.02  # a smaller chance of an unlisted host is not worth a word
@@ -50,7 +51,7 @@ def halo_list(galaxies: list[Galaxies], groups: list[Groups], cosmos: Cosmos, *,
     membership  False gives every galaxy a halo of its own, in a group or not: to see what that does
     """
     _distinct_rows([*galaxies, *groups])
-    group_parts = [group_haloes(g, k, cosmos) for k, g in enumerate(groups)]
+    group_parts = [_centred(group_haloes(g, k, cosmos), g.centre_err_share, cosmos) for k, g in enumerate(groups)]
     galaxy_parts = [galaxy_haloes(g, len(groups) + k, cosmos) for k, g in enumerate(galaxies)]
     notes: list[str] = []
     merged_groups = merged_galaxies = None
@@ -62,7 +63,7 @@ def halo_list(galaxies: list[Galaxies], groups: list[Groups], cosmos: Cosmos, *,
         if doubles:
             notes.append(f"Galaxies listed in more than one catalogue, counted once: {doubles}.")
     if merged_galaxies is not None and membership:
-        merged_galaxies = _without_members(merged_galaxies, merged_groups, notes, cosmos)
+        merged_galaxies, merged_groups = _without_members(merged_galaxies, merged_groups, notes, cosmos)
     parts = [p for p in (merged_groups, merged_galaxies) if p is not None]
     if not parts:
         raise InputError("no catalogue given. Name at least one with --galaxies or --groups.")
@@ -127,20 +128,36 @@ def _host_ceiling(haloes: Haloes, z, shift, cosmos: Cosmos) -> np.ndarray:
     return result
 
 
+def _centred(groups: Haloes, largest_share: float, cosmos: Cosmos) -> Haloes:
+    """Centre errors cut at a share of r200c."""
+    if not len(groups) or not np.isfinite(largest_share):
+        return groups
+    r200c_kpc = cosmos.r200c_kpc(point_mass(groups, cosmos), point_redshift(groups, cosmos))
+    return change(groups, centre_err_kpc=np.minimum(groups.centre_err_kpc, largest_share * r200c_kpc))
+
+
 def _merge_groups(groups: Haloes, notes: list[str], cosmos: Cosmos) -> Haloes:
     size = extent(groups, point_mass(groups, cosmos), cosmos)
     merged = merge_groups(groups, size)
     if len(merged) < len(groups):
         gone = len(groups) - len(merged)
         notes.append(f"Group rows that name a halo, or a part of one, of another catalogue: {gone}.")
-    return change(merged, notes=groups.notes)
+    placeless = np.isnan(merged.distance_mpc) & (merged.z < LEAST_FLOW_KMS / SPEED_OF_LIGHT_KMS)
+    if placeless.any():
+        notes.append(
+            f"Groups below {LEAST_FLOW_KMS:g} km/s without a distance, left out since their own motion hides it:"
+            f" {placeless.sum()}. A distance_mpc brings them back."
+        )
+    return change(rows(merged, np.flatnonzero(~placeless)), notes=groups.notes)
 
 
-def _without_members(galaxies: Haloes, groups: Haloes | None, notes: list[str], cosmos: Cosmos) -> Haloes:
-    """Galaxies that have a halo of their own in some draw, with the probability that they have none."""
+def _without_members(galaxies: Haloes, groups: Haloes | None, notes: list[str], cosmos: Cosmos):
+    """Galaxies with a halo of their own in some draw, and how probably they have none; groups with their members."""
     names = sorted({name for text in ([] if groups is None else groups.source_rows) for name in text.split(";")})
     sizes = [[] if h is None else _sizes(h, cosmos) for h in (galaxies, groups)]
     found = memberships(galaxies, sizes[0], groups, sizes[1], names, cosmos)
+    if groups is not None:
+        groups = _with_members(groups, galaxies, found)
     own = np.flatnonzero(found.listed < 1)
     _say_members(found, galaxies, names, notes)
     note = galaxies.note.copy()
@@ -150,7 +167,21 @@ def _without_members(galaxies: Haloes, groups: Haloes | None, notes: list[str], 
         for n, p in _zip(note, found, lone)
     ]
     changed = change(galaxies, p_member=found.listed + found.unlisted, p_hosted=found.hosted, note=note)
-    return change(rows(changed, own), notes=galaxies.notes)
+    return change(rows(changed, own), notes=galaxies.notes), groups
+
+
+def _with_members(groups: Haloes, galaxies: Haloes, found: Membership) -> Haloes:
+    """The names of the galaxies that each group holds for sure, and a word where one is too heavy for it."""
+    members, note = groups.members.copy(), groups.note.copy()
+    held: dict[int, list[str]] = {}
+    for j in np.flatnonzero((found.listed >= 1) & (found.group >= 0)).tolist():
+        held.setdefault(int(found.group[j]), []).append(str(galaxies.source_rows[j]))
+    for i, names in held.items():
+        members[i] = ";".join(names)
+    for j in np.flatnonzero(found.heavier).tolist():
+        i = int(found.group[j])
+        note[i] = _added(note[i], f"{galaxies.id[j]} at its centre is a galaxy of a heavier halo")
+    return change(groups, members=members, note=note)
 
 
 def _sizes(haloes: Haloes, cosmos: Cosmos) -> list[Extent]:

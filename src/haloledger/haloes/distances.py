@@ -34,7 +34,8 @@ def z_of_luminosity_distance(mpc, cosmos: Cosmos) -> np.ndarray:
 def point_redshift(haloes, cosmos: Cosmos) -> np.ndarray:
     """The redshift that sets the distance, without errors; shape (n,)."""
     near = by_distance(haloes)
-    z = np.maximum(np.nan_to_num(haloes.z, nan=MIN_Z), MIN_Z)
+    flow = haloes.z if haloes.z_flow is None else haloes.z_flow
+    z = np.maximum(np.nan_to_num(flow, nan=MIN_Z), MIN_Z)
     z[near] = z_of_luminosity_distance(haloes.distance_mpc[near], cosmos)
     return z
 

@@ -4,7 +4,9 @@ Groups. Rows are taken from heavy to light. A row inside the phase space of a he
     the same halo   where the masses are within 0.7 dex and the halo has no row of the same catalogue yet: then the row
                     with a measured distance within 50 Mpc, then the lowest `precedence`, then the earliest catalogue,
                     gives centre and mass;
-    a part of it    where it is lighter by more: a clump inside a cluster, which adds no halo.
+    a part of it    where it is lighter by more, or where the halo has a row of the same catalogue and this one lies
+                    within half of r200c: a clump inside a cluster, which adds no halo.
+Where centres agree to 0.3 r200c and masses to 0.7 dex, redshifts need agree to five sigma only.
 The rows of one catalogue are never compared with each other: it says itself that they are distinct.
 
 Galaxies. Mutually nearest rows of two catalogues within max(5 arcsec, 10 kpc) and 500 km/s (or at distances that agree)
@@ -28,6 +30,10 @@ from haloledger.haloes.phase_space import Extent, inside
 from haloledger.haloes.table import COLUMNS, Haloes, change, join, rows
 
 COMPARABLE_DEX = 0.7
+CORE = 0.5  # r200c: within it a second row of a catalogue is the same halo's, cut in two
+CONCENTRIC = 0.3
+CONCENTRIC_DEPTH = 5 / 3  # five sigma instead of three
+CONCENTRIC_DEPTH_PHOTOMETRIC = 5 / 2  # five instead of two
 SAME_GALAXY_ARCSEC = 5.0
 SAME_GALAXY_KPC = 10.0
 SAME_GALAXY_KMS = 500.0
@@ -71,21 +77,27 @@ def _join_rows(groups: Haloes, size: Extent) -> tuple[np.ndarray, np.ndarray]:
     mass = size.log_m200c
     rank = np.empty(n, dtype=int)
     rank[np.lexsort((groups.id.astype(str), -mass))] = np.arange(n)
-    pairs = inside(groups, size, groups, size)
+    pairs = inside(groups, size, groups, size, CONCENTRIC_DEPTH_PHOTOMETRIC)
+    alike = np.abs(mass[pairs.i] - mass[pairs.j]) <= COMPARABLE_DEX
     use = (groups.catalogue[pairs.i] != groups.catalogue[pairs.j]) & (rank[pairs.i] < rank[pairs.j])
+    deepest = np.where(groups.photometric[pairs.j], CONCENTRIC_DEPTH_PHOTOMETRIC, CONCENTRIC_DEPTH)
+    use &= (pairs.depth <= 1) | ((pairs.radius < CONCENTRIC) & alike & (pairs.depth <= deepest))
     i, j, nearness = pairs.i[use], pairs.j[use], np.hypot(pairs.radius[use], pairs.depth[use])
+    core = pairs.radius[use] < CORE
     order = np.lexsort((rank[i], nearness, rank[j]))
     head, same = np.arange(n), np.ones(n, dtype=bool)
     listed: dict[int, set[int]] = {}
     done = -1
-    for a, b in zip(i[order].tolist(), j[order].tolist(), strict=True):
+    for a, b, central in zip(i[order].tolist(), j[order].tolist(), core[order].tolist(), strict=True):
         h = int(head[a])
         if b == done or groups.catalogue[h] == groups.catalogue[b]:
             continue
         comparable = mass[h] - mass[b] <= COMPARABLE_DEX
         names = listed.setdefault(h, {int(groups.catalogue[h])})
         if comparable and int(groups.catalogue[b]) in names:
-            continue
+            if not central:
+                continue
+            comparable = False
         head[b], same[b], done = h, comparable, b
         if comparable:
             names.add(int(groups.catalogue[b]))
@@ -176,7 +188,7 @@ def _absorb(a: Haloes, i: np.ndarray, b: Haloes, cosmos: Cosmos) -> Haloes:
         (
             "spectroscopic redshift",
             a.photometric[i] & ~b.photometric,
-            ("z", "z_err", "photometric", "z_outlier", "z_posterior"),
+            ("z", "z_flow", "z_err", "photometric", "z_outlier", "z_posterior"),
         ),
         ("group", (a.listed_group[i] == "") & (b.listed_group != ""), ("listed_group",)),
     ):

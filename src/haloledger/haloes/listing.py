@@ -10,12 +10,13 @@ from haloledger.catalogs.canonical import Galaxies, Groups
 from haloledger.cosmos.background import Cosmos
 from haloledger.haloes.distances import point_luminosity_distance_mpc, point_redshift
 from haloledger.haloes.relations import load_relation
-from haloledger.haloes.stellar_mass import stellar_masses
+from haloledger.haloes.stellar_mass import StellarMasses, stellar_masses
 from haloledger.haloes.table import Haloes, rows
 
 GROUP_ERR_DEX = 0.3  # of a listed mass without error; common practice for groups
 DISPERSION_ERR = 0.91  # error of a velocity dispersion / (n - 1)^0.5, Ruel et al. 2014, ApJ 792, 45; from memory
 DEFAULT_MEMBERS = 10
+HEAVIEST_DEX = 12.0  # log10 Msun, six times M87: ours
 DEFAULT_RELATION = {"sigma_v": "evrard2008", "richness": "mcclintock2019", "lx": "pratt2009"}
 PROXY_COLUMN = {"sigma_v": "sigma_v_kms", "richness": "richness", "lx": "lx_1e44_erg_s"}
 
@@ -24,6 +25,7 @@ def galaxy_haloes(galaxies: Galaxies, catalogue: int, cosmos: Cosmos) -> Haloes:
     """One halo per galaxy that has a halo mass or a stellar mass, as listed or from magnitudes."""
     n = len(galaxies)
     stellar = stellar_masses(galaxies, point_luminosity_distance_mpc(galaxies, cosmos), cosmos)
+    stellar = _believable(stellar, galaxies)
     listed = np.isfinite(galaxies.log_m200c)
     from_light = np.isnan(galaxies.log_mstar) & ~listed
     columns = _shared(galaxies, catalogue, cosmos) | {
@@ -41,6 +43,20 @@ def galaxy_haloes(galaxies: Galaxies, catalogue: int, cosmos: Cosmos) -> Haloes:
     return _with_mass(Haloes(**columns), galaxies.label, "a stellar mass, a halo mass, or Ks, W1 or g and i magnitudes")
 
 
+def _believable(stellar: StellarMasses, galaxies: Galaxies) -> StellarMasses:
+    """Masses from light above the heaviest galaxies', cut there: a star, a blend or a wrong distance."""
+    heavy = np.isnan(galaxies.log_mstar) & (stellar.log_mstar > HEAVIEST_DEX)
+    note = stellar.note.copy()
+    note[heavy] = [
+        f"{n}; its light says 1e{m:.1f} Msun, more than any galaxy: cut" for n, m in _pairs(note, stellar, heavy)
+    ]
+    return StellarMasses(np.where(heavy, HEAVIEST_DEX, stellar.log_mstar), stellar.err, note)
+
+
+def _pairs(note: np.ndarray, stellar: StellarMasses, where: np.ndarray):
+    return zip(note[where], stellar.log_mstar[where], strict=True)
+
+
 def group_haloes(groups: Groups, catalogue: int, cosmos: Cosmos) -> Haloes:
     """One halo per group with a mass, or with the proxy that its card names: one of the two, never both."""
     n = len(groups)
@@ -48,6 +64,7 @@ def group_haloes(groups: Groups, catalogue: int, cosmos: Cosmos) -> Haloes:
     proxy, proxy_err, relation, note = _proxy(groups)
     mass_err = np.where(np.isfinite(groups.log_mass_err), groups.log_mass_err, GROUP_ERR_DEX)
     bias, bias_err = groups.one_minus_b
+    proxy_bias, proxy_bias_err = load_relation(relation).one_minus_b if relation else (1.0, 0.0)
     columns = _shared(groups, catalogue, cosmos) | {
         "kind": np.full(n, "group"),
         "log_mstar": np.full(n, np.nan),
@@ -59,8 +76,8 @@ def group_haloes(groups: Groups, catalogue: int, cosmos: Cosmos) -> Haloes:
         "relation": np.where(has_mass, "", relation).astype(object),
         "mass_def": np.broadcast_to(np.asarray(groups.mass_def, dtype=object), n).copy(),
         "posterior": np.full(n, groups.mass_is == "posterior"),
-        "one_minus_b": np.where(has_mass, bias, 1.0),
-        "one_minus_b_err": np.where(has_mass, bias_err, 0.0),
+        "one_minus_b": np.where(has_mass, bias, proxy_bias),
+        "one_minus_b_err": np.where(has_mass, bias_err, proxy_bias_err),
         "precedence": np.full(n, groups.precedence),
     }
     return _with_mass(Haloes(**columns), groups.label, "a mass, or a velocity dispersion, richness or X-ray luminosity")
@@ -76,6 +93,7 @@ def _shared(table: Galaxies | Groups, catalogue: int, cosmos: Cosmos) -> dict[st
         "ra_deg": np.asarray(table.ra_deg, dtype=float),
         "dec_deg": np.asarray(table.dec_deg, dtype=float),
         "z": np.where(z_given, table.z, point_redshift(table, cosmos)),
+        "z_flow": _flow(table, z_given, cosmos),
         "z_err": np.where(z_given, np.nan_to_num(table.z_err, nan=0.0), 0.0),
         "photometric": np.asarray(table.photometric, dtype=bool),
         "z_outlier": np.where(table.photometric, getattr(table, "z_outlier", 0.0), 0.0),
@@ -83,6 +101,8 @@ def _shared(table: Galaxies | Groups, catalogue: int, cosmos: Cosmos) -> dict[st
         "distance_err_mpc": np.asarray(table.distance_err_mpc, dtype=float),
         "p_member": np.zeros(n),
         "p_hosted": np.zeros(n),
+        "n_members": np.asarray(getattr(table, "n_members", np.full(n, np.nan)), dtype=float),
+        "members": np.full(n, "", dtype=object),
         "relation": np.full(n, "", dtype=object),
         "mass_def": np.full(n, "200c", dtype=object),
         "z_posterior": np.full(n, table.z_is == "posterior"),
@@ -93,6 +113,11 @@ def _shared(table: Galaxies | Groups, catalogue: int, cosmos: Cosmos) -> dict[st
         "precedence": np.full(n, 50),
         "listed_group": np.full(n, "", dtype=object),
     }
+
+
+def _flow(table: Galaxies | Groups, z_given: np.ndarray, cosmos: Cosmos) -> np.ndarray:
+    flow = table.z if table.z_flow is None else table.z_flow
+    return np.where(z_given, flow, point_redshift(table, cosmos))
 
 
 def _proxy(groups: Groups) -> tuple[np.ndarray, np.ndarray, str, str]:

@@ -92,9 +92,12 @@ def _by_rule(rule: list[str], values: _Values, state: State, c_relation, cosmos:
     else:
         proxy = load_relation(name)
         if proxy.needs_prior:
-            return inverse(name, cosmos).mass(values.value, state.z, values.err, state.score)
+            # a relation for hydrostatic masses is met by a halo heavier by 1 / (1-b)
+            value = values.value - proxy.parameters["slope"] * state.log_one_minus_b
+            return inverse(name, cosmos).mass(value, state.z, values.err, state.score)
         err = np.hypot(proxy.scatter(state.z), proxy.parameters["slope"] * values.err)
-        own, mass_def = proxy.mean(values.value, state.z, cosmos) + err * state.score, proxy.mass_def
+        own = proxy.mean(values.value, state.z, cosmos) + proxy.median_step + err * state.score
+        mass_def = proxy.mass_def
     return to_200c_fast(own, mass_def, state.z, c_relation, cosmos, state.log_c_offset)
 
 
@@ -118,7 +121,7 @@ def _naive(rule: list[str], value, state: State, relation: RelationOfDraw, cosmo
     if rule[0] == "stellar":
         value = value + state.value_shift
     own = read_backwards(proxy, value, state.z, cosmos) if proxy.needs_prior else proxy.mean(value, state.z, cosmos)
-    return own, proxy.mass_def
+    return own - state.log_one_minus_b, proxy.mass_def
 
 
 def read_backwards(relation: Relation, y, z, cosmos: Cosmos) -> np.ndarray:

@@ -10,13 +10,14 @@ and their shares are the probabilities. Listed haloes are groups, and galaxies: 
 as far as it is the centre of a halo itself. `companions` are the haloes beside k that are not in it. The completeness,
 the share of hosts that the catalogue with the satellite holds too, is learnt from each catalogue.
 
-Published member lists win. Galaxies with a listed halo mass have no stellar mass to be counted by: with sharp redshifts
-they are inside a group or not, with others galaxies follow matter (`odds_by_matter`).
+Published member lists win, and a galaxy at a group's very centre and velocity is that group's. Galaxies with a listed
+halo mass have no stellar mass to be counted by: with sharp redshifts they are inside a group or not, with others
+galaxies follow matter (`odds_by_matter`).
 """
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -24,7 +25,7 @@ from haloledger.cosmos.background import Cosmos
 from haloledger.cosmos.concentration import concentration
 from haloledger.haloes.distances import MIN_Z, SPEED_OF_LIGHT_KMS, point_redshift
 from haloledger.haloes.nfw_place import surface_per_r200c2
-from haloledger.haloes.phase_space import Extent, Inside, inside
+from haloledger.haloes.phase_space import Extent, Inside, inside, same_place
 from haloledger.haloes.posterior import MASS_RELATION
 from haloledger.haloes.satellites import numbers_of_nature, occupation
 from haloledger.haloes.table import Haloes
@@ -47,6 +48,8 @@ class Membership:
     unlisted: np.ndarray
     hosted: np.ndarray  # part of `unlisted`: the galaxy is the heaviest satellite, with which the host comes in
     completeness: dict[int, float]  # catalogue -> share of hosts it holds
+    group: np.ndarray  # the group that most probably holds it, -1 where none does
+    heavier: np.ndarray  # bool: at the centre of that group, and too heavy for it
     claimed: int  # galaxies that a heavier galaxy claims with more than a half
 
 
@@ -63,10 +66,19 @@ def memberships(
     central, satellite, first = _field(galaxies, counted, cosmos)
     fixed = np.zeros(len(galaxies))
     by_group, companions = np.zeros(len(galaxies)), np.zeros(len(galaxies))
+    group, heavier = np.full(len(galaxies), -1), np.zeros(len(galaxies), dtype=bool)
     if groups is not None:
         fixed = _fixed(galaxies, size, groups, group_sizes[1], group_rows, counted, cosmos)
-        found = _lighter(inside(groups, group_sizes[-1], galaxies, size), group_sizes[1], size, counted)
-        np.add.at(by_group, found.j, _rate(galaxies, groups, group_sizes, found, cosmos, with_central=True))
+        around = inside(groups, group_sizes[-1], galaxies, size)
+        found = _lighter(around, group_sizes[1], size, counted)
+        rate = _rate(galaxies, groups, group_sizes, found, cosmos, with_central=True)
+        np.add.at(by_group, found.j, rate)
+        _strongest(group, found, rate)
+        centred = _part(around, same_place(groups, group_sizes[1], galaxies, around))
+        group[centred.j], fixed[centred.j] = centred.i, 1.0
+        too_heavy = size.log_m200c[centred.j] > group_sizes[1].log_m200c[centred.i] + HEAVIER_DEX
+        heavier[centred.j] = too_heavy
+        _published_groups(group, galaxies, groups)
         np.maximum.at(companions, found.j, _companions(galaxies, groups, group_sizes[1], found, cosmos))
     pairs = _lighter(inside(galaxies, sizes[-1], galaxies, size), size, size, counted, strict=True)
     pairs = _part(pairs, counted[pairs.i] & (fixed[pairs.i] < 1) & (fixed[pairs.j] < 1))
@@ -74,7 +86,28 @@ def memberships(
     np.maximum.at(companions, pairs.j, _companions(galaxies, galaxies, size, pairs, cosmos))
     central = central * (1 + companions)
     share = first / np.maximum(satellite, 1e-300)
-    return _shares(galaxies, counted, fixed, central, satellite, share, by_group, pairs, by_pair)
+    return replace(
+        _shares(galaxies, counted, fixed, central, satellite, share, by_group, pairs, by_pair),
+        group=group,
+        heavier=heavier & (group >= 0),
+    )
+
+
+def _strongest(group: np.ndarray, found: Inside, rate: np.ndarray) -> None:
+    """Write the group with the highest rate of each galaxy into `group`, in place."""
+    order = np.lexsort((-found.i, rate))  # the last assignment stays
+    group[found.j[order]] = found.i[order]
+
+
+def _published_groups(group: np.ndarray, galaxies: Haloes, groups: Haloes) -> None:
+    """Write the groups that catalogues name into `group`, in place; a full name goes before a bare id."""
+    place: dict[str, int] = {}
+    for i, text in enumerate(groups.source_rows):
+        for name in str(text).split(";"):
+            place[name] = i
+            place.setdefault(name.split(":", 1)[-1], i)
+    for j in np.flatnonzero(galaxies.listed_group != "").tolist():
+        group[j] = place.get(str(galaxies.listed_group[j]), group[j])
 
 
 def _shares(
@@ -100,8 +133,15 @@ def _shares(
     listed = np.where(listed > CERTAIN, 1.0, listed)
     unlisted = np.where((listed >= 1) | (unlisted < LEAST_UNLISTED), 0.0, unlisted)
     mostly = counted & (fixed < 1) & (listed > 0.5) & (by_galaxy > by_group)
+    nobody = np.full(len(galaxies), -1)
     return Membership(
-        listed, unlisted, unlisted * first, dict(zip(names.tolist(), complete.tolist(), strict=True)), int(mostly.sum())
+        listed=listed,
+        unlisted=unlisted,
+        hosted=unlisted * first,
+        completeness=dict(zip(names.tolist(), complete.tolist(), strict=True)),
+        group=nobody,
+        heavier=nobody >= 0,
+        claimed=int(mostly.sum()),
     )
 
 

@@ -18,7 +18,10 @@ from haloledger.haloes.relations import load_relation
 from haloledger.haloes.table import Haloes
 
 N_SIGMA = 3.0  # of the velocity dispersion and the redshift errors, in quadrature
-N_SIGMA_DISTANCE = 2.0
+N_SIGMA_DISTANCE = 4.0  # errors of distances are often understated: what looks like one object is one until then
+SAME_PLACE_ARCMIN = 1.0  # within 50 Mpc, where distances of one object differ most
+SAME_PLACE_KPC = 20.0
+SAME_PLACE_KMS = 300.0
 DISTANCE_SCALE = 0.07  # by which two catalogues' distance scales may differ; common practice
 N_SIGMA_PHOTOMETRIC = 2.0
 BLANK_KMS = 500.0  # a row without redshift of its own: distance and peculiar velocity say no more
@@ -52,20 +55,41 @@ def extent(haloes: Haloes, log_m200c: np.ndarray, cosmos: Cosmos) -> Extent:
     return Extent(log_m200c, z, cosmos.angular_distance_kpc(z), cosmos.r200c_kpc(log_m200c, z), sigma)
 
 
-def inside(haloes: Haloes, size: Extent, others: Haloes, other_extent: Extent) -> Inside:
-    """All pairs of a halo and a row of `others` inside it; a centre error widens the circle by one sigma."""
+def inside(haloes: Haloes, size: Extent, others: Haloes, other_extent: Extent, farthest: float = 1.0) -> Inside:
+    """All pairs of a halo and a row of `others` inside it; a centre error widens the circle by one sigma.
+
+    farthest  largest depth, over the usual window
+    """
     reach_kpc = size.r200c_kpc + haloes.centre_err_kpc
-    window = N_SIGMA * size.sigma_v_kms / SPEED_OF_LIGHT_KMS
-    i, j = close_pairs(_places(haloes, window), _places(others, np.zeros(len(others))), reach_kpc / size.kpc_per_rad)
+    window = farthest * N_SIGMA * size.sigma_v_kms / SPEED_OF_LIGHT_KMS
+    places = _places(haloes, window, farthest), _places(others, np.zeros(len(others)), farthest)
+    i, j = close_pairs(*places, reach_kpc / size.kpc_per_rad)
     radians = separation_rad(haloes.ra_deg[i], haloes.dec_deg[i], others.ra_deg[j], others.dec_deg[j])
     radius = radians * size.kpc_per_rad[i] / reach_kpc[i]
     depth = _depth(haloes, size, i, others, j)
-    keep = (radius < 1) & (depth <= 1) & _distances_agree(haloes, size, i, others, other_extent, j)
+    agree = _distances_agree(haloes, size, i, others, other_extent, j) | _same_place(
+        radians, haloes, size, i, others, j
+    )
+    keep = (radius < 1) & (depth <= farthest) & agree
     return Inside(i[keep], j[keep], radius[keep], depth[keep])
 
 
-def _places(haloes: Haloes, extra: np.ndarray) -> Places:
-    err = N_SIGMA * np.maximum(haloes.z_err, BLANK_KMS / SPEED_OF_LIGHT_KMS) + extra
+def same_place(haloes: Haloes, size: Extent, others: Haloes, found: Inside) -> np.ndarray:
+    """Pairs that are one object by position and velocity, whatever their distances say; shape (n_pairs,)."""
+    i, j = found.i, found.j
+    radians = separation_rad(haloes.ra_deg[i], haloes.dec_deg[i], others.ra_deg[j], others.dec_deg[j])
+    return _same_place(radians, haloes, size, i, others, j)
+
+
+def _same_place(radians, haloes: Haloes, size: Extent, i, others: Haloes, j) -> np.ndarray:
+    kms = np.abs(others.z[j] - haloes.z[i]) * SPEED_OF_LIGHT_KMS / (1 + size.z[i])
+    near = by_distance(haloes)[i] | by_distance(others)[j]
+    allowed = np.maximum(SAME_PLACE_KPC / size.kpc_per_rad[i], np.where(near, np.radians(SAME_PLACE_ARCMIN / 60), 0.0))
+    return (radians < allowed) & (kms < SAME_PLACE_KMS) & ~others.photometric[j]
+
+
+def _places(haloes: Haloes, extra: np.ndarray, farthest: float) -> Places:
+    err = farthest * N_SIGMA * np.maximum(haloes.z_err, BLANK_KMS / SPEED_OF_LIGHT_KMS) + extra
     z = np.maximum(haloes.z, -0.01)
     return Places(haloes.ra_deg, haloes.dec_deg, z - err, z + err)
 

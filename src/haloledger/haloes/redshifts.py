@@ -77,7 +77,8 @@ def _hubble_flow(haloes: Haloes, listed, score, universe: Universe, relation: Re
     # the error of the measurement, and the speed by which the halo leaves the flow
     err = np.hypot(haloes.z_err, PECULIAR_KMS / SPEED_OF_LIGHT_KMS * (1 + listed))
     z = np.maximum(listed[:, None] + err[:, None] * score, np.maximum(LOWEST_SHARE * listed, MIN_Z)[:, None])
-    prior = (haloes.kind == "galaxy") & ~haloes.z_posterior & (haloes.photometric | (err > WIDE * listed))
+    galaxy = haloes.kind == "galaxy"
+    prior = ~haloes.z_posterior & ((galaxy & haloes.photometric) | (err > WIDE * listed))
     joint = np.flatnonzero(prior)
     if joint.size:
         part = rows(haloes, joint)

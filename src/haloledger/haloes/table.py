@@ -16,7 +16,8 @@ class Haloes:
     source_rows: np.ndarray  # all rows that name this halo, ";"-joined, the first is id
     ra_deg: np.ndarray
     dec_deg: np.ndarray
-    z: np.ndarray  # as listed; from the distance where only that is known
+    z: np.ndarray  # as listed, heliocentric, for comparisons; from the distance where only that is known
+    z_flow: np.ndarray  # what sets the distance in the Hubble flow: in the CMB frame where the frame of z is known
     z_err: np.ndarray
     photometric: np.ndarray  # bool
     z_outlier: np.ndarray  # share of outliers among photometric redshifts like this one
@@ -40,6 +41,8 @@ class Haloes:
     catalogue: np.ndarray  # int: place of the catalogue among the user's
     precedence: np.ndarray  # int: lower gives centre and mass where two catalogues name one halo
     p_hosted: np.ndarray  # part of p_member: in those draws the row stands for a host that no list has, off its place
+    n_members: np.ndarray  # listed for the group, NaN where not known
+    members: np.ndarray  # ";"-joined rows of galaxies that this group holds for sure
     listed_group: np.ndarray  # "label:id" of the group the catalogue puts this galaxy in, "" where none
     notes: tuple[str, ...] = ()
 

@@ -93,9 +93,11 @@ class Proxy:
 
 @dataclass(frozen=True)
 class Centre:
-    """[centre]: 1 sigma of the centre on each axis, proper kpc."""
+    """[centre]: 1 sigma of the centre on each axis, proper kpc; at most a share of r200c."""
 
     error_kpc: float = 0.0
+    largest_share: float = float("inf")
+    single_kpc: float = float("nan")  # of a group with one member
     source: str = ""
 
 

@@ -120,7 +120,11 @@ def _rest(card: Card) -> list[str]:
         lines.append(f"Magnitudes: {said}, {frame}{source}.")
     if card.kind == "groups":
         source = f" ({card.centre.source})" if card.centre.source else ""
-        lines.append(f"Centres: {card.centre.error_kpc:g} kpc on each axis{source}; precedence {card.precedence}.")
+        most = card.centre.largest_share
+        size = f"{card.centre.error_kpc:g} kpc on each axis" + (f", at most {most:g} r200c" if most < 1e3 else "")
+        if card.centre.single_kpc == card.centre.single_kpc:
+            size += f", {card.centre.single_kpc:g} kpc for a group of one galaxy"
+        lines.append(f"Centres: {size}{source}; precedence {card.precedence}.")
     if card.position.without_angle:
         lines.append(f"Axes that differ without an angle: {card.position.without_angle} ({card.position.source}).")
     if card.depth.text:

@@ -22,6 +22,7 @@ from haloledger.haloes.relations.forms import FORMS
 FOLDER = Path(__file__).parent
 STELLAR_TO_HALO = ("behroozi2013", "behroozi2019", "kravtsov2018", "moster2013")
 """What the nuisance `relation` chooses from, each as likely as the other."""
+PAIRS = ("scatter_dex", "z_range", "log_mass_range", "one_minus_b")
 GIVES = ("proxy given mass", "mass given the proxy")
 
 
@@ -42,6 +43,13 @@ class Relation:
     source: str
     confidence: str
     parameters: Mapping[str, Any]
+    one_minus_b: tuple[float, float] = (1.0, 0.0)  # hydrostatic bias of the relation's masses, and its error
+    mean_is_linear: bool = False  # the mean is that of the mass, not of its logarithm
+
+    @property
+    def median_step(self) -> float:
+        """What to add to the mean [dex] for the median of a log-normal scatter."""
+        return -0.5 * np.log(10) * self.scatter_dex[0] ** 2 if self.mean_is_linear else 0.0
 
     @property
     def needs_prior(self) -> bool:
@@ -66,7 +74,7 @@ def load_relation(name: str) -> Relation:
     if not path.is_file():
         raise InputError(f"relation '{name}' is not known. Write one of: {', '.join(relation_names())}.")
     text = tomllib.loads(path.read_text(encoding="utf-8"))
-    pairs: dict[str, Any] = {k: tuple(text.pop(k)) for k in ("scatter_dex", "z_range", "log_mass_range")}
+    pairs: dict[str, Any] = {k: tuple(text.pop(k)) for k in PAIRS if k in text}
     return Relation(**text, **pairs)
 
 
