@@ -10,7 +10,7 @@ import numpy as np
 from haloledger.cosmos.background import Cosmos
 from haloledger.rehearse.sky.truth import Sky, pick
 
-OUTLIER = 0.15  # width over (1 + z) of the redshifts that fail; common practice for "catastrophic"
+OUTLIER = 0.3  # width over (1 + z) of the redshifts that fail: ours, without a preferred place
 SPEC_ERR = 1e-4
 GROUPS = ("true", "imperfect", "none")
 
@@ -21,7 +21,6 @@ class Survey:
 
     depth: float = 9.0  # log10 M* at the flux limit, at z = 0.1
     least: float = 9.3  # and no galaxy below this measured mass
-    mass_err: float = 0.15  # dex
     photoz: float = 0.0  # error over 1 + z; 0: every redshift is spectroscopic
     outliers: float = 0.0  # share of photometric redshifts that fail
     spec_share: float = 0.0  # share of the galaxies that have spectra all the same
@@ -49,7 +48,7 @@ class Seen:
 def look(sky: Sky, survey: Survey, cosmos: Cosmos, rng: np.random.Generator) -> Seen:
     """The sky through the survey."""
     z_measured, photometric = _redshifts(sky, survey, rng)
-    log_mstar = _stellar_masses(sky, survey, z_measured, cosmos, rng)
+    log_mstar = _stellar_masses(sky, z_measured, cosmos)
     rows = _rows(sky, survey, log_mstar, z_measured, cosmos)
     counts = np.bincount(sky.galaxies.halo[rows], minlength=len(sky.haloes))
     grouped = _grouped(counts, survey, rng)
@@ -72,14 +71,12 @@ def _redshifts(sky: Sky, survey: Survey, rng) -> tuple[np.ndarray, np.ndarray]:
     return g.z_seen + err * rng.standard_normal(n), photometric
 
 
-def _stellar_masses(sky: Sky, survey: Survey, z_measured, cosmos: Cosmos, rng) -> np.ndarray:
+def _stellar_masses(sky: Sky, z_measured, cosmos: Cosmos) -> np.ndarray:
     """Measured from flux: they follow the measured redshift."""
     g, halo = sky.galaxies, sky.haloes
-    noise = survey.mass_err * rng.standard_normal(len(g))
-    zero = sky.lines.zero_point[halo.line[g.halo]]
     true_mpc = cosmos.luminosity_distance_mpc(halo.z[g.halo])
     seen_mpc = cosmos.luminosity_distance_mpc(np.maximum(z_measured, 1e-3))
-    return g.log_mstar + zero + noise + 2 * np.log10(seen_mpc / true_mpc)
+    return g.measured + 2 * np.log10(seen_mpc / true_mpc)
 
 
 def _rows(sky: Sky, survey: Survey, log_mstar, z_measured, cosmos: Cosmos) -> np.ndarray:
@@ -113,7 +110,7 @@ def _galaxy_table(sky: Sky, survey: Survey, rows, z_measured, photometric, log_m
         "z_err": np.where(phot, survey.photoz * (1 + z_measured[rows]), SPEC_ERR),
         "z_kind": np.where(phot, "phot", "spec"),
         "log_mstar": log_mstar[rows],
-        "log_mstar_err": np.full(len(rows), survey.mass_err),
+        "log_mstar_err": np.full(len(rows), sky.mass_err),
     }
     if survey.groups == "true":
         columns["group_id"] = np.where(grouped[g.halo], np.char.add("c", g.halo.astype(str)), "")

@@ -6,6 +6,8 @@ galaxies of 1e10 Msun are satellites. Satellites follow NFW inside r200c and mov
 
 from __future__ import annotations
 
+from dataclasses import dataclass
+
 import numpy as np
 
 from haloledger.cosmos.background import Cosmos
@@ -42,44 +44,62 @@ def amplitude(share: float, z: float, cosmos: Cosmos) -> float:
     return share / (1 - share) * float(mass_function(at, z, cosmos)) / satellites
 
 
-def make_galaxies(
-    haloes: Haloes, relation_of_halo, host_distance_mpc, subhaloes: float, scatter_factor: float, cosmos: Cosmos, rng
-) -> Galaxies:
-    """All galaxies of these haloes; the first len(haloes) rows are the centrals, in order.
+@dataclass(frozen=True)
+class Light:
+    """How halo mass becomes a measured stellar mass; arrays a halo (n,)."""
 
-    relation_of_halo   number of the relation that holds for each
-    subhaloes          amplitude of the subhalo mass function
-    """
+    relation: np.ndarray  # number of the relation that holds
+    zero_point: np.ndarray
+    scatter_factor: float
+    mass_err: float
+
+    def part(self, index) -> Light:
+        """The haloes `index`, repeated or left out."""
+        return Light(self.relation[index], self.zero_point[index], self.scatter_factor, self.mass_err)
+
+
+def stellar_masses(log_m, z, light: Light, cosmos: Cosmos, rng) -> tuple[np.ndarray, np.ndarray]:
+    """True and measured log10 M* of galaxies formed in haloes of these masses."""
+    c200c = median_concentration(log_m, z, cosmos)
+    true = np.empty(len(log_m))
+    for k, name in enumerate(relations.NAMES):
+        rows = np.flatnonzero(light.relation == k)
+        mean = relations.mean_log_mstar(name, log_m[rows], z[rows], c200c[rows], cosmos)
+        spread = light.scatter_factor * relations.scatter_dex(name, z[rows])
+        true[rows] = mean + spread * rng.standard_normal(len(rows))
+    return true, true + light.zero_point + light.mass_err * rng.standard_normal(len(log_m))
+
+
+def centrals(haloes: Haloes, masses: tuple[np.ndarray, np.ndarray]) -> Galaxies:
+    """One galaxy at the centre of each halo; `masses` are true and measured."""
     n = len(haloes)
-    floor = SUBHALO_LEAST - haloes.log_m200c
-    owner = np.repeat(np.arange(n), rng.poisson(subhaloes * subhaloes_above(floor)))
-    log_psi = draw_log_psi(floor[owner], rng)
-    halo = np.concatenate([np.arange(n), owner])
-    mass = np.concatenate([haloes.log_m200c, haloes.log_m200c[owner] + log_psi])
-    mstar = _stellar(mass, haloes.z[halo], relation_of_halo[halo], scatter_factor, cosmos, rng)
-    east, north, velocity = _orbits(haloes, owner, cosmos, rng)
-    zero = np.zeros(n)
-    scale = 1 + np.concatenate([zero, velocity]) / LIGHT_KMS
     return Galaxies(
-        halo=halo,
-        central=np.arange(len(halo)) < n,
-        log_mstar=mstar,
-        z_seen=(1 + haloes.z_seen[halo]) * scale - 1,
-        east_mpc=haloes.east_mpc[halo] + np.concatenate([zero, east]),
-        north_mpc=haloes.north_mpc[halo] + np.concatenate([zero, north]),
+        halo=np.arange(n),
+        central=np.ones(n, dtype=bool),
+        log_mstar=masses[0],
+        measured=masses[1],
+        z_seen=haloes.z_seen,
+        east_mpc=haloes.east_mpc,
+        north_mpc=haloes.north_mpc,
     )
 
 
-def _stellar(log_m, z, relation, scatter_factor, cosmos: Cosmos, rng) -> np.ndarray:
-    """Stellar masses, with the scatter of the relation times `scatter_factor`."""
-    c200c = median_concentration(log_m, z, cosmos)
-    result = np.empty(len(log_m))
-    for k, name in enumerate(relations.NAMES):
-        rows = np.flatnonzero(relation == k)
-        mean = relations.mean_log_mstar(name, log_m[rows], z[rows], c200c[rows], cosmos)
-        spread = scatter_factor * relations.scatter_dex(name, z[rows])
-        result[rows] = mean + spread * rng.standard_normal(len(rows))
-    return result
+def satellites(haloes: Haloes, light: Light, subhaloes: float, cosmos: Cosmos, rng) -> Galaxies:
+    """Satellites of all haloes; `subhaloes` is the amplitude of the subhalo mass function."""
+    floor = SUBHALO_LEAST - haloes.log_m200c
+    owner = np.repeat(np.arange(len(haloes)), rng.poisson(subhaloes * subhaloes_above(floor)))
+    mass = haloes.log_m200c[owner] + draw_log_psi(floor[owner], rng)
+    true, measured = stellar_masses(mass, haloes.z[owner], light.part(owner), cosmos, rng)
+    east, north, velocity = _orbits(haloes, owner, cosmos, rng)
+    return Galaxies(
+        halo=owner,
+        central=np.zeros(len(owner), dtype=bool),
+        log_mstar=true,
+        measured=measured,
+        z_seen=(1 + haloes.z_seen[owner]) * (1 + velocity / LIGHT_KMS) - 1,
+        east_mpc=haloes.east_mpc[owner] + east,
+        north_mpc=haloes.north_mpc[owner] + north,
+    )
 
 
 def _orbits(haloes: Haloes, owner, cosmos: Cosmos, rng):

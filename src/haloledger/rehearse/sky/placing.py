@@ -34,6 +34,11 @@ class Placed:
     north_mpc: np.ndarray
 
 
+def class_of(log_m200c) -> np.ndarray:
+    """Number of the class of each mass."""
+    return np.clip(np.searchsorted(CLASS_EDGES, log_m200c, side="right") - 1, 0, len(CLASS_EDGES) - 2)
+
+
 def class_bias(z: float, cosmos: Cosmos) -> np.ndarray:
     """Mean bias of each class, over its haloes."""
     means = []
@@ -43,8 +48,8 @@ def class_bias(z: float, cosmos: Cosmos) -> np.ndarray:
     return np.array(means)
 
 
-def place_haloes(box: Box, first_mpc, last_mpc, cosmos: Cosmos, rng: np.random.Generator) -> Placed:
-    """Haloes of all lines between two distances [comoving Mpc] a line; shape (n,)."""
+def place_haloes(box: Box, first_mpc, last_mpc, boost, cosmos: Cosmos, rng: np.random.Generator) -> Placed:
+    """Haloes of all lines between two distances [comoving Mpc] a line, each class `boost` times as many; (n,)."""
     lines = np.arange(len(last_mpc))
     parts = []
     for start in range(0, len(lines), CHUNK):
@@ -52,7 +57,7 @@ def place_haloes(box: Box, first_mpc, last_mpc, cosmos: Cosmos, rng: np.random.G
         frame = _Frame(part, first_mpc[part], last_mpc[part], rng, box)
         for k in range(len(CLASS_EDGES) - 1):
             for inner, outer, sectors in RINGS[: RINGS_OF_CLASS[k]]:
-                parts.append(_ring(box, k, frame, inner, outer, sectors, cosmos, rng))
+                parts.append(_ring(box, k, frame, inner, outer, sectors, boost[k], cosmos, rng))
     columns = (np.concatenate(c) for c in zip(*parts, strict=True))
     return Placed(*columns)
 
@@ -80,12 +85,12 @@ class _Frame:
         return start[:, None] + self.distance[None, :, None] * self.along[:, None]
 
 
-def _ring(box: Box, k: int, frame: _Frame, inner, outer, sectors, cosmos, rng):
+def _ring(box: Box, k: int, frame: _Frame, inner, outer, sectors, boost, cosmos, rng):
     """Haloes of class k in one ring: line, log mass, distance, east, north."""
     number, masses = _class(k, cosmos)
     z = cosmos.z_at_comoving_distance(frame.distance)
     volume = np.pi * (outer**2 - inner**2) / sectors * STEP_MPC
-    mean = np.interp(z, Z_NODES, number) * volume
+    mean = boost * np.interp(z, Z_NODES, number) * volume
     middle = np.sqrt(0.5 * (inner**2 + outer**2)) if inner else 0.0
     found = []
     for s in range(sectors):

@@ -9,20 +9,23 @@ import numpy as np
 from haloledger.cosmos.background import Cosmos
 from haloledger.cosmos.mass_function import mass_function
 from haloledger.rehearse.sky import columns, relations
-from haloledger.rehearse.sky.galaxies import amplitude, make_galaxies
+from haloledger.rehearse.sky.galaxies import Light, amplitude, centrals, satellites, stellar_masses
 from haloledger.rehearse.sky.matter import make_box
-from haloledger.rehearse.sky.placing import class_bias, place_haloes
+from haloledger.rehearse.sky.placing import class_bias, class_of, place_haloes
+from haloledger.rehearse.sky.population import Population
 from haloledger.rehearse.sky.structure import (
     CONCENTRATION_DEX,
     LIGHT_KMS,
     PECULIAR_KMS,
     median_concentration,
     nfw_radius,
+    velocity_dispersion_kms,
 )
 from haloledger.rehearse.sky.truth import Galaxies, Haloes, Lines, Sky, join, pick
 
 Z_BOX = 0.2
 NEAREST_Z = 0.03  # tubes of neighbouring lines do not meet beyond it
+BOOST = (2.5, 2.5, 3.0, 4.0, 6.0, 8.0, 10.0)  # a class of masses: most haloes that one may have to stand for
 
 
 @dataclass(frozen=True)
@@ -36,6 +39,8 @@ class Truth:
     scatter_factor: float = 1.0  # times the published scatter of stellar mass at fixed halo mass
     relation: str = ""  # one of relations.NAMES for all lines; "" draws one a line
     zero_point_dex: float = 0.1
+    mass_err: float = 0.15  # dex, of measured stellar masses
+    same_counts: bool = True  # every universe shows the same numbers of galaxies: see `population`
     one_universe: bool = False  # all lines share one draw of the nuisances
     host_is_satellite: float = 0.25
     cells: int = 256
@@ -45,26 +50,38 @@ class Truth:
 def simulate(truth: Truth, seed: int, cosmos: Cosmos) -> Sky:
     """The sky of one seed."""
     draw = _Streams(seed)
-    n = truth.lines
-    z = draw("lines").uniform(*truth.z_range, n)
+    z = draw("lines").uniform(*truth.z_range, truth.lines)
     relation, zero, kept = _nuisances(truth, draw("nuisances"))
-    box = make_box(class_bias(Z_BOX, cosmos), Z_BOX, cosmos, draw("box"), truth.cells, truth.cell_mpc)
-    first = np.full(n, cosmos.comoving_distance_mpc(NEAREST_Z))
-    last = cosmos.comoving_distance_mpc(z + truth.behind)
-    placed = place_haloes(box, first, last, cosmos, draw("haloes"))
-    del box
-    field = _haloes(placed, cosmos, draw("structure"))
-    hosts, offset = _hosts(z, truth, cosmos, draw("hosts"))
+    field, masses = _field(truth, z, relation, zero, cosmos, draw)
+    hosts, satellite = _hosts(z, truth, cosmos, draw("hosts"))
     haloes = join([hosts, field])  # halo i holds the burst of line i
-    subhaloes = amplitude(truth.satellite_share, Z_BOX, cosmos)
-    galaxies = make_galaxies(
-        haloes, relation[haloes.line], None, subhaloes, truth.scatter_factor, cosmos, draw("galaxies")
-    )
-    host_row = np.arange(n)
-    galaxies, host_row = _satellite_hosts(galaxies, offset, haloes, host_row, draw("host orbits"))
-    ra, dec = spread_on_sky(n)
+    light = Light(relation[haloes.line], zero[haloes.line], truth.scatter_factor, truth.mass_err)
+    of_hosts = stellar_masses(hosts.log_m200c, hosts.z, light.part(hosts.line), cosmos, draw("host masses"))
+    own = centrals(haloes, tuple(np.concatenate(m) for m in zip(of_hosts, masses, strict=True)))
+    amount = amplitude(truth.satellite_share, Z_BOX, cosmos)
+    galaxies = join([own, satellites(haloes, light, amount, cosmos, draw("satellites"))])
+    galaxies, host_row = _satellite_hosts(galaxies, satellite, haloes, cosmos, draw("host orbits"))
+    ra, dec = spread_on_sky(truth.lines)
     lines = Lines(ra, dec, z, galaxies.z_seen[host_row], relation, zero, kept, host_row)
-    return Sky(lines, haloes, galaxies, true_columns(haloes, z, cosmos))
+    return Sky(lines, haloes, galaxies, true_columns(haloes, z, cosmos), truth.mass_err)
+
+
+def _field(truth: Truth, z, relation, zero, cosmos: Cosmos, draw: _Streams):
+    """Haloes in front and behind, with the stellar masses of their centrals, true and measured."""
+    box = make_box(class_bias(Z_BOX, cosmos), Z_BOX, cosmos, draw("box"), truth.cells, truth.cell_mpc)
+    first = np.full(truth.lines, cosmos.comoving_distance_mpc(NEAREST_Z))
+    last = cosmos.comoving_distance_mpc(z + truth.behind)
+    boost = np.array(BOOST if truth.same_counts else (1.0,) * len(BOOST))
+    field = _haloes(place_haloes(box, first, last, boost, cosmos, draw("haloes")), cosmos, draw("structure"))
+    light = Light(relation[field.line], zero[field.line], truth.scatter_factor, truth.mass_err)
+    masses = stellar_masses(field.log_m200c, field.z, light, cosmos, draw("central masses"))
+    if not truth.same_counts:
+        return field, masses
+    names = (truth.relation,) if truth.relation else relations.NAMES
+    population = Population(names, truth.zero_point_dex, truth.mass_err, truth.scatter_factor, cosmos)
+    wanted = population.weight(masses[1], field.z, light.relation, light.zero_point)
+    keep = draw("counts").random(len(field)) * boost[class_of(field.log_m200c)] < wanted
+    return pick(field, keep), tuple(m[keep] for m in masses)
 
 
 class _Streams:
@@ -141,23 +158,22 @@ def _inverse(weights, x, u) -> np.ndarray:
     return np.interp(u, grown / grown[-1], x)
 
 
-def _satellite_hosts(galaxies: Galaxies, satellite, haloes: Haloes, host_row, rng):
+def _satellite_hosts(galaxies: Galaxies, satellite, haloes: Haloes, cosmos: Cosmos, rng):
     """Hosts that are satellites: a galaxy of some 1e10 Msun, planted at the line, moving in its halo."""
-    from haloledger.cosmos.background import cosmology
-    from haloledger.rehearse.sky.structure import velocity_dispersion_kms
-
     halo = np.flatnonzero(satellite)
     k = len(halo)
-    sigma = velocity_dispersion_kms(haloes.log_m200c[halo], haloes.z[halo], cosmology())
+    sigma = velocity_dispersion_kms(haloes.log_m200c[halo], haloes.z[halo], cosmos)
+    mstar = 10.2 + 0.3 * rng.standard_normal(k)
     added = Galaxies(
         halo=halo,
         central=np.zeros(k, dtype=bool),
-        log_mstar=10.2 + 0.3 * rng.standard_normal(k),
+        log_mstar=mstar,
+        measured=mstar,
         z_seen=(1 + haloes.z_seen[halo]) * (1 + sigma / LIGHT_KMS * rng.standard_normal(k)) - 1,
         east_mpc=3e-3 * rng.standard_normal(k),
         north_mpc=3e-3 * rng.standard_normal(k),
     )
-    host_row = host_row.copy()
+    host_row = np.arange(len(satellite))
     host_row[halo] = len(galaxies) + np.arange(k)
     return join([galaxies, added]), host_row
 

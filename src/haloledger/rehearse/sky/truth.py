@@ -47,7 +47,8 @@ class Galaxies:
 
     halo: np.ndarray
     central: np.ndarray
-    log_mstar: np.ndarray  # true, before zero point and error
+    log_mstar: np.ndarray  # true
+    measured: np.ndarray  # with zero point and error, at the true distance
     z_seen: np.ndarray
     east_mpc: np.ndarray
     north_mpc: np.ndarray
@@ -64,6 +65,7 @@ class Sky:
     haloes: Haloes
     galaxies: Galaxies
     dm: np.ndarray
+    mass_err: float  # dex, of `measured`
 
 
 def pick(table, index):
