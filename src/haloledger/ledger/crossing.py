@@ -118,8 +118,9 @@ def _place_burst_inside(crossing: Crossing, sightline: Sightline, haloes: Haloes
     for row, uniform in zip(rows, wanted, strict=True):
         radius = np.sqrt(crossing.impact_r200c[row][:, None] ** 2 + depth[None, :] ** 2 + 1e-4)
         density = _nfw(radius, crossing.c200c[row][:, None])
-        share = np.cumsum(density, axis=1)
-        share = (share - share[:, :1]) / (share[:, -1:] - share[:, :1])
+        share = np.zeros_like(density)
+        share[:, 1:] = np.cumsum(density[:, 1:] + density[:, :-1], axis=1)
+        share /= share[:, -1:]
         above = np.clip(np.argmax(share >= uniform[:, None], axis=1), 1, None)
         k = np.arange(len(uniform))
         low, high = share[k, above - 1], share[k, above]
