@@ -34,10 +34,13 @@ def test_unknown_models(name, message):
         (SHAPE + KEPT + "[spred]\nx = 1\n", "mine.toml: unknown key 'spred'. Did you mean 'spread'"),
         (
             SHAPE.replace("inner_offset", "y0") + KEPT,
-            "shape.unknown key 'y0'. Known: kind, inner_slope, inner_offset, core",
+            "in shape: unknown key 'y0'. Known: kind, inner_slope, inner_offset, core",
         ),
         (SHAPE.replace("inner_offset", "inner_ofset") + KEPT, "unknown key 'inner_ofset'. Did you mean 'inner_offset'"),
-        (SHAPE.replace("inner_offset = 2.0\n", "") + KEPT, "shape.key 'inner_offset' is missing. Write inner_offset ="),
+        (
+            SHAPE.replace("inner_offset = 2.0\n", "") + KEPT,
+            "in shape: missing key 'inner_offset'. Write inner_offset =",
+        ),
         (
             SHAPE.replace("modified-nfw", "modifed-nfw") + KEPT,
             "kind = 'modifed-nfw' is not known. Did you mean 'modified-nfw'",
@@ -87,8 +90,8 @@ def test_faulty_files(body, message, tmp_path):
             "log_m200c = [15.5, 10.0]",
             r"validity.log_m200c = \[15.5, 10.0\]. Write \[lowest, highest\]",
         ),
-        ('summary = "For a test."\n', "", "key 'summary' is missing"),
-        ('source = "none"\n', "", "key 'source' is missing"),
+        ('summary = "For a test."\n', "", "missing key 'summary'"),
+        ('source = "none"\n', "", "missing key 'source'"),
     ],
 )
 def test_faulty_heads(old, new, message, tmp_path):

@@ -249,16 +249,19 @@ def _table(data, key: str, shown: str) -> dict[str, Any]:
 
 def _keys(data: dict[str, Any], needed, free, shown: str, where: str) -> None:
     known = (*needed, *free)
+    place = f"in {where.rstrip('.: ')}: " if where else ""
     for key in data:
         if key not in known:
-            raise InputError(f"{shown}: {where}unknown key '{key}'.{_near(key, known)} Known: {', '.join(known)}.")
-    for key in needed:
-        if key not in data:
-            raise InputError(f"{shown}: {where}key '{key}' is missing. Write {key} = ...")
+            raise InputError(f"{shown}: {place}unknown key '{key}'.{_near(key, known)} Known: {', '.join(known)}.")
+    lacking = [key for key in needed if key not in data]
+    if lacking:
+        keys = ", ".join(f"'{key}'" for key in lacking)
+        write = ", ".join(f"{key} = ..." for key in lacking)
+        raise InputError(f"{shown}: {place}missing {'keys' if len(lacking) > 1 else 'key'} {keys}. Write {write}")
 
 
 def _near(word: str, known) -> str:
-    near = get_close_matches(word, list(known), n=1, cutoff=0.5)
+    near = get_close_matches(word, list(known), n=1, cutoff=0.6)
     return f" Did you mean '{near[0]}'?" if near else ""
 
 
