@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 from scipy.integrate import quad
@@ -156,6 +158,47 @@ def test_group_list_takes_its_members(sky, make_galaxies, make_groups, planck):
     giants = {galaxies.row[k] for k in np.flatnonzero(sky.central[index] & np.isin(sky.host[index], heavy))}
     own = {row: 1 - p for row, p in zip(haloes.id, haloes.p_member, strict=True)}
     assert np.mean([own.get(row, 0.0) for row in giants]) < 0.02
+
+
+def test_company_tells_the_mass(sky, make_galaxies, planck):
+    galaxies, index = sky.galaxies(make_galaxies, np.ones(sky.host.size, bool))
+    haloes = halo_list([galaxies], [], planck)
+    at = {row: k for k, row in enumerate(galaxies.row)}
+    truth = sky.mass[sky.host[index[[at[i] for i in haloes.id]]]]
+    central = sky.central[index[[at[i] for i in haloes.id]]]
+    # with `membership` held at 0 a mass comes from the galaxy's own light alone
+    told, alone = (
+        drawn_numbers(haloes, planck, h)[2].log_m200c.mean(axis=1) for h in (HELD, HELD | {"membership": "0"})
+    )
+    cluster = central & (truth > 13.9)
+    assert cluster.sum() >= 5
+    assert (told - truth)[cluster].mean() == pytest.approx(0.0, abs=0.15)
+    assert (alone - truth)[cluster].mean() < -0.4
+    scatter = [np.std((m - truth)[central & (truth > 12.3)]) for m in (told, alone)]
+    assert scatter[0] < 0.85 * scatter[1]
+    lonely = central & (haloes.n_satellites < 0.3) & (haloes.log_mstar > 10.7)
+    assert (told - truth)[lonely].mean() == pytest.approx(0.0, abs=0.06)
+    assert (alone - truth)[lonely].mean() > 0.1
+
+
+def test_galaxies_in_no_group_of_a_complete_list_are_light(sky, make_galaxies, make_groups, planck):
+    # every halo with two listed galaxies is a listed group with a member list: what is left is lone
+    galaxies, index = sky.galaxies(make_galaxies, np.ones(sky.host.size, bool))
+    host = sky.host[index]
+    many = np.flatnonzero(np.bincount(host, minlength=sky.mass.size) > 1)
+    groups = make_groups(
+        "c", many.size, ra_deg=180 + sky.x[many], dec_deg=sky.y[many], z=sky.z[many], log_mass=sky.mass[many]
+    )
+    groups = replace(groups, row=np.array([f"c:{h}" for h in many], dtype=object), log_mass_err=np.zeros(many.size))
+    named = replace(galaxies, group=np.array([f"c:{h}" if h in set(many) else "" for h in host], dtype=object))
+    haloes = halo_list([named], [groups], planck)
+    lone = np.flatnonzero(haloes.kind == "galaxy")
+    truth = (10 ** sky.mass[np.setdiff1d(host, many)]).sum()
+    drawn = drawn_numbers(haloes, planck)[2]
+    mass = np.where(drawn.own, 10**drawn.log_m200c, 0.0)[lone].sum(axis=0).mean()
+    assert mass == pytest.approx(truth, rel=0.1)
+    naive = drawn_numbers(haloes, planck, HELD | {"membership": "0"})[2]
+    assert (10 ** naive.log_m200c[lone]).sum(axis=0).mean() > 1.3 * truth
 
 
 @pytest.mark.parametrize("z", [0.0, 0.5])

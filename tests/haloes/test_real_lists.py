@@ -87,7 +87,8 @@ def test_cluster_stands_once(name, ra, dec, z, whole_sky, planck):
     near = np.degrees(separation_rad(haloes.ra_deg, haloes.dec_deg, ra, dec)) < 1.0
     found = rows(haloes, np.flatnonzero(near & (np.abs(haloes.z - z) < 0.004) & (haloes.kind == "group")))
     assert len(found) == 1, found.source_rows
-    assert 14.3 < point_mass(found, planck)[0] < 15.1
+    # X-ray light alone puts Virgo at 14.1, galaxy light at 14.6
+    assert 14.2 < point_mass(found, planck)[0] < 15.1
     if name == "Virgo":  # two catalogues have it; Kourkchi & Tully 2017: 15.8 Mpc, 4.06e14
         assert found.source_rows[0].split(";")[0].startswith("kourkchi-tully:")
         assert "mcxc:" in found.source_rows[0]

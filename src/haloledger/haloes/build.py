@@ -11,6 +11,8 @@ from scipy.special import ndtri
 from haloledger.catalogs.canonical import Galaxies, Groups
 from haloledger.cosmos.background import Cosmos
 from haloledger.errors import InputError
+from haloledger.haloes.combine import measured
+from haloledger.haloes.company import score_in_company, with_company
 from haloledger.haloes.distances import (
     PECULIAR_KMS,
     SPEED_OF_LIGHT_KMS,
@@ -31,6 +33,7 @@ from haloledger.haloes.satellites import occupation
 from haloledger.haloes.table import Haloes, change, join, rows
 
 MEDIAN_RELATION = "moster2013"  # for sizes in the search for doubles and members alone
+COMBINE = ("weighted", "precedence")
 CEILING_SIGMA = 3.5
 CEILING_DISTANCE = 2.0
 LEAST_FLOW_KMS = 600.0  # two peculiar velocities
@@ -42,21 +45,32 @@ MOST_NAMED = 20
 __all__ = ["halo_list", "mass_ceiling", "point_mass", "z_floor"]
 
 
-def halo_list(galaxies: list[Galaxies], groups: list[Groups], cosmos: Cosmos, *, membership: bool = True) -> Haloes:
+def halo_list(
+    galaxies: list[Galaxies],
+    groups: list[Groups],
+    cosmos: Cosmos,
+    *,
+    combine: str = "weighted",
+    membership: bool = True,
+) -> Haloes:
     """Haloes of all catalogues, each once, in the order of id; `notes` says what was left out or put together.
 
     The order of the catalogues decides which one describes a galaxy that two list, and a group of equal precedence; the
     order of their rows decides nothing.
 
+    combine     "weighted": masses of one halo from several catalogues are averaged by their errors; "precedence": the
+                row that describes the halo gives the mass
     membership  False gives every galaxy a halo of its own, in a group or not: to see what that does
     """
+    if combine not in COMBINE:
+        raise InputError(f"combine '{combine}' is not known. Write one of {', '.join(COMBINE)}.")
     _distinct_rows([*galaxies, *groups])
     group_parts = [_centred(group_haloes(g, k, cosmos), g.centre_err_share, cosmos) for k, g in enumerate(groups)]
     galaxy_parts = [galaxy_haloes(g, len(groups) + k, cosmos) for k, g in enumerate(galaxies)]
     notes: list[str] = []
     merged_groups = merged_galaxies = None
     if group_parts:
-        merged_groups = _merge_groups(join(group_parts), notes, cosmos)
+        merged_groups = _merge_groups(join(group_parts), combine, notes, cosmos)
     if galaxy_parts:
         merged_galaxies = merge_galaxies(galaxy_parts, cosmos)
         doubles = sum(map(len, galaxy_parts)) - len(merged_galaxies)
@@ -71,9 +85,12 @@ def halo_list(galaxies: list[Galaxies], groups: list[Groups], cosmos: Cosmos, *,
     return rows_in_order(change(whole, notes=(*whole.notes, *notes)))
 
 
-def point_mass(haloes: Haloes, cosmos: Cosmos, relation: str = MEDIAN_RELATION, score: float = 0.0, z=None, shift=0.0):
+def point_mass(
+    haloes: Haloes, cosmos: Cosmos, relation: str = MEDIAN_RELATION, score: float | np.ndarray = 0.0, z=None, shift=0.0
+):
     """log10 M200c at one normal score (0 is the median), with mean bias and concentration; shape (n,).
 
+    score  one number, or one a row
     z      redshift that sets the distance, as listed by default
     shift  dex added to the measured value of rows whose mass rests on a flux
     """
@@ -81,11 +98,11 @@ def point_mass(haloes: Haloes, cosmos: Cosmos, relation: str = MEDIAN_RELATION, 
     z = point_redshift(haloes, cosmos) if z is None else z
     column = np.zeros((n, 1))
     state = State(
-        score=column + score,
-        value_score=column + score,
+        score=column + np.asarray(score).reshape(-1, 1),
+        value_score=column + np.asarray(score).reshape(-1, 1),
         z=z[:, None],
         value_shift=np.where(haloes.err_holds_z, 0.0, shift)[:, None],
-        log_one_minus_b=np.log10(haloes.one_minus_b)[:, None],
+        log_one_minus_b=(haloes.bias_share * np.log10(haloes.one_minus_b))[:, None],
         log_c_offset=column,
     )
     picked = RelationOfDraw((relation,), np.zeros(1, dtype=int))
@@ -108,12 +125,19 @@ def mass_ceiling(haloes: Haloes, cosmos: Cosmos) -> np.ndarray:
     ceiling = np.empty(len(haloes))
     ceiling[~stellar] = point_mass(rows(haloes, ~stellar), cosmos, score=CEILING_SIGMA)
     part = rows(haloes, stellar)
+    highest = np.full((len(part), 1), CEILING_SIGMA)
     ceiling[stellar] = np.max(
-        [point_mass(part, cosmos, name, CEILING_SIGMA, shift=shift[stellar]) for name in STELLAR_TO_HALO], axis=0
+        [
+            point_mass(part, cosmos, name, score_in_company(part, highest, name, cosmos), shift=shift[stellar])
+            for name in STELLAR_TO_HALO
+        ],
+        axis=0,
     )
     # a low (1-b) makes a mass heavier: three of its errors, but not below 0.5
     low_b = np.maximum(haloes.one_minus_b - 3 * haloes.one_minus_b_err, np.minimum(haloes.one_minus_b, 0.5))
-    return np.maximum(ceiling + np.log10(haloes.one_minus_b / low_b), _host_ceiling(haloes, z, shift, cosmos))
+    return np.maximum(
+        ceiling + haloes.bias_share * np.log10(haloes.one_minus_b / low_b), _host_ceiling(haloes, z, shift, cosmos)
+    )
 
 
 def _host_ceiling(haloes: Haloes, z, shift, cosmos: Cosmos) -> np.ndarray:
@@ -136,9 +160,9 @@ def _centred(groups: Haloes, largest_share: float, cosmos: Cosmos) -> Haloes:
     return change(groups, centre_err_kpc=np.minimum(groups.centre_err_kpc, largest_share * r200c_kpc))
 
 
-def _merge_groups(groups: Haloes, notes: list[str], cosmos: Cosmos) -> Haloes:
+def _merge_groups(groups: Haloes, combine: str, notes: list[str], cosmos: Cosmos) -> Haloes:
     size = extent(groups, point_mass(groups, cosmos), cosmos)
-    merged = merge_groups(groups, size)
+    merged = merge_groups(groups, size, measured(groups, cosmos) if combine == "weighted" else None)
     if len(merged) < len(groups):
         gone = len(groups) - len(merged)
         notes.append(f"Group rows that name a halo, or a part of one, of another catalogue: {gone}.")
@@ -167,6 +191,7 @@ def _without_members(galaxies: Haloes, groups: Haloes | None, notes: list[str], 
         for n, p in _zip(note, found, lone)
     ]
     changed = change(galaxies, p_member=found.listed + found.unlisted, p_hosted=found.hosted, note=note)
+    changed = with_company(changed, found.satellites, found.share, cosmos)
     return change(rows(changed, own), notes=galaxies.notes), groups
 
 

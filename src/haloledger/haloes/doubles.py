@@ -3,7 +3,7 @@
 Groups. Rows are taken from heavy to light. A row inside the phase space of a heavier row of another catalogue is
     the same halo   where the masses are within 0.7 dex and the halo has no row of the same catalogue yet: then the row
                     with a measured distance within 50 Mpc, then the lowest `precedence`, then the earliest catalogue,
-                    gives centre and mass;
+                    gives centre, and mass where masses are not averaged (`combine`);
     a part of it    where it is lighter by more, or where the halo has a row of the same catalogue and this one lies
                     within half of r200c: a clump inside a cluster, which adds no halo.
 Where centres agree to 0.3 r200c and masses to 0.7 dex, redshifts need agree to five sigma only.
@@ -18,6 +18,7 @@ from __future__ import annotations
 import numpy as np
 
 from haloledger.cosmos.background import Cosmos
+from haloledger.haloes.combine import Measured, combined
 from haloledger.haloes.distances import (
     SPEED_OF_LIGHT_KMS,
     by_distance,
@@ -38,11 +39,15 @@ SAME_GALAXY_ARCSEC = 5.0
 SAME_GALAXY_KPC = 10.0
 SAME_GALAXY_KMS = 500.0
 DESCRIBED = ("source_rows", "distance_mpc", "distance_err_mpc", "note")
+WEIGHED = ("mass_kind", "value", "value_err", "relation", "mass_def", "posterior", "one_minus_b", "one_minus_b_err")
 SAME_GALAXY_DEX = 1.0  # a dwarf beside a giant is another galaxy, however near
 
 
-def merge_groups(groups: Haloes, size: Extent) -> Haloes:
-    """Groups without doubles, in the order of id; `source_rows` keeps the rows that were put together."""
+def merge_groups(groups: Haloes, size: Extent, measures: Measured | None = None) -> Haloes:
+    """Groups without doubles, in the order of id; `source_rows` keeps the rows that were put together.
+
+    measures  what the rows measure: then the masses of one halo are averaged
+    """
     head, same = _join_rows(groups, size)
     chosen = np.arange(len(groups))
     crowds = _crowds(head)
@@ -51,10 +56,12 @@ def merge_groups(groups: Haloes, size: Extent) -> Haloes:
         chosen[h] = peers[_first(rows(groups, peers))]
     heads = np.flatnonzero(head == np.arange(len(groups)))
     merged = rows(groups, chosen[heads])
-    columns = {name: getattr(merged, name).copy() for name in DESCRIBED}
+    columns = {name: getattr(merged, name).copy() for name in (*DESCRIBED, *WEIGHED, "bias_share")}
     for k, h in enumerate(heads.tolist()):
         if h in crowds:
             _describe(columns, k, groups, chosen[h], crowds[h], same)
+            if measures is not None:
+                _weigh(columns, k, groups, chosen[h], crowds[h][same[crowds[h]]], measures)
     return rows_in_order(change(merged, **columns))
 
 
@@ -121,6 +128,24 @@ def _describe(columns: dict[str, np.ndarray], k: int, groups: Haloes, chosen: in
         columns["distance_err_mpc"][k] = groups.distance_err_mpc[known[0]]
         said.append(f"distance from {groups.id[known[0]]}")
     columns["note"][k] = "; ".join(x for x in said if x)
+
+
+def _weigh(columns: dict[str, np.ndarray], k: int, groups: Haloes, chosen: int, peers, measures: Measured) -> None:
+    """Write the mass that all peers give together into row k, in place."""
+    peers = peers[np.lexsort((groups.id[peers].astype(str), groups.catalogue[peers], groups.precedence[peers]))]
+    found = combined(measures, np.array([chosen, *peers[peers != chosen]]), groups.one_minus_b)
+    if found is None:
+        return
+    hydrostatic = found.used[measures.biased[found.used]]
+    giver = int(hydrostatic[0]) if hydrostatic.size else chosen
+    bias = (groups.one_minus_b[giver], groups.one_minus_b_err[giver])
+    values = ("mass", found.log_m200c, found.err, "", "200c", False, *bias)
+    for name, value in zip(WEIGHED, values, strict=True):
+        columns[name][k] = value
+    columns["bias_share"][k] = found.bias_share if hydrostatic.size else 1.0
+    if not hydrostatic.size:
+        columns["one_minus_b"][k], columns["one_minus_b_err"][k] = 1.0, 0.0
+    columns["note"][k] += f"; mass from {', '.join(groups.id[found.used])} together"
 
 
 def merge_galaxies(catalogues: list[Haloes], cosmos: Cosmos) -> Haloes:

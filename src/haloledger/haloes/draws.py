@@ -11,9 +11,10 @@ import numpy as np
 from haloledger.cosmos.background import Cosmos
 from haloledger.cosmos.concentration import SCATTER_DEX
 from haloledger.engine.universe import Universe
+from haloledger.haloes.company import score_in_company
 from haloledger.haloes.hosts import put_hosts
 from haloledger.haloes.masses import State, log_m200c, naive_log_m200c
-from haloledger.haloes.nuisances import held_number, log_one_minus_b, relation_of_draw, zero_point
+from haloledger.haloes.nuisances import RelationOfDraw, held_number, log_one_minus_b, relation_of_draw, zero_point
 from haloledger.haloes.redshifts import draw_redshifts
 from haloledger.haloes.relations import load_relation
 from haloledger.haloes.table import HaloDraws, Haloes, rows
@@ -31,11 +32,11 @@ def draw_haloes(haloes: Haloes, index, universe: Universe, c_relation: str | flo
     follows = np.where(part.err_holds_z[:, None], 0.0, shifts.log_l_shift)
     offset = SCATTER_DEX * universe.normals("concentration", part.id)
     state = State(
-        score=universe.normals("halo_mass", part.id),
+        score=_scores(part, universe, relation, cosmos),
         value_score=_some_normals(universe, "stellar_mass", part.id, part.posterior & (part.mass_kind == "stellar")),
         z=shifts.z,
         value_shift=follows - zero,
-        log_one_minus_b=log_one_minus_b(universe, part.one_minus_b, part.one_minus_b_err),
+        log_one_minus_b=part.bias_share[:, None] * log_one_minus_b(universe, part.one_minus_b, part.one_minus_b_err),
         log_c_offset=offset,
     )
     rule = naive_log_m200c if universe.fixed else log_m200c
@@ -62,6 +63,16 @@ def relation_notes(haloes: Haloes, index, universe: Universe) -> list[str]:
         if beyond:
             notes.append(f"{name} is used beyond its redshifts ({low:g} to {high:g}) for {beyond} haloes.")
     return notes
+
+
+def _scores(haloes: Haloes, universe: Universe, relation: RelationOfDraw, cosmos: Cosmos) -> np.ndarray:
+    """Normal scores of the halo mass, moved by the company a galaxy keeps; (n, n_draws)."""
+    score = universe.normals("halo_mass", haloes.id)
+    if universe.fixed or held_number(universe, "membership") == 0:
+        return score
+    for name, columns in relation.columns():
+        score[:, columns] = score_in_company(haloes, np.take(score, columns, axis=1), name, cosmos)
+    return score
 
 
 def _own(haloes: Haloes, universe: Universe) -> tuple[np.ndarray, np.ndarray]:

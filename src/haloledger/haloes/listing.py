@@ -79,6 +79,7 @@ def group_haloes(groups: Groups, catalogue: int, cosmos: Cosmos) -> Haloes:
         "one_minus_b": np.where(has_mass, bias, proxy_bias),
         "one_minus_b_err": np.where(has_mass, bias_err, proxy_bias_err),
         "precedence": np.full(n, groups.precedence),
+        "origin": np.where(has_mass, groups.mass_from, groups.proxy).astype(object),
     }
     return _with_mass(Haloes(**columns), groups.label, "a mass, or a velocity dispersion, richness or X-ray luminosity")
 
@@ -101,6 +102,11 @@ def _shared(table: Galaxies | Groups, catalogue: int, cosmos: Cosmos) -> dict[st
         "distance_err_mpc": np.asarray(table.distance_err_mpc, dtype=float),
         "p_member": np.zeros(n),
         "p_hosted": np.zeros(n),
+        "bias_share": np.ones(n),
+        "origin": np.full(n, "", dtype=object),
+        "n_satellites": np.full(n, np.nan),
+        "faintest": np.full(n, np.nan),
+        "list_share": np.ones(n),
         "n_members": np.asarray(getattr(table, "n_members", np.full(n, np.nan)), dtype=float),
         "members": np.full(n, "", dtype=object),
         "relation": np.full(n, "", dtype=object),

@@ -48,6 +48,8 @@ class Membership:
     unlisted: np.ndarray
     hosted: np.ndarray  # part of `unlisted`: the galaxy is the heaviest satellite, with which the host comes in
     completeness: dict[int, float]  # catalogue -> share of hosts it holds
+    satellites: np.ndarray  # listed galaxies that each galaxy is expected to hold
+    share: np.ndarray  # completeness of its catalogue
     group: np.ndarray  # the group that most probably holds it, -1 where none does
     heavier: np.ndarray  # bool: at the centre of that group, and too heavy for it
     claimed: int  # galaxies that a heavier galaxy claims with more than a half
@@ -118,7 +120,7 @@ def _shares(
     names, which = np.unique(galaxies.catalogue, return_inverse=True)
     complete = np.full(names.size, nature["mean"])
     own = np.where(counted, 1.0, 1.0 - fixed)
-    by_galaxy = np.zeros(len(galaxies))
+    by_galaxy, whole = np.zeros(len(galaxies)), np.ones(len(galaxies))
     for _ in range(ROUNDS):
         by_galaxy = np.zeros(len(galaxies))
         np.add.at(by_galaxy, pairs.j, own[pairs.i] * by_pair)
@@ -136,6 +138,8 @@ def _shares(
     nobody = np.full(len(galaxies), -1)
     return Membership(
         listed=listed,
+        satellites=_held(pairs, own[pairs.i] * by_pair / whole[pairs.j], len(galaxies)),
+        share=complete[which],
         unlisted=unlisted,
         hosted=unlisted * first,
         completeness=dict(zip(names.tolist(), complete.tolist(), strict=True)),
@@ -143,6 +147,12 @@ def _shares(
         heavier=nobody >= 0,
         claimed=int(mostly.sum()),
     )
+
+
+def _held(pairs: Inside, claims: np.ndarray, n: int) -> np.ndarray:
+    held = np.zeros(n)
+    np.add.at(held, pairs.i, claims)
+    return held
 
 
 def _field(galaxies: Haloes, counted: np.ndarray, cosmos: Cosmos) -> list[np.ndarray]:

@@ -120,7 +120,7 @@ def _quantiles(haloes: Haloes, listed, err, relation: RelationOfDraw, zero, cosm
         true = y[:, None] - (_centre(zero) + ZERO_POINTS)[:, None]
         ln_count = inverse(name, cosmos).ln_count(true, grid[:, None], haloes.value_err[:, None, None])
         ln_joint = ln_p[:, None] + np.where(counted, ln_count, 0.0)
-        table[:, i] = _invert(ln_joint, grid[:, None])
+        table[:, i] = quantiles_on_grid(ln_joint, grid[:, None])
         top = ln_joint.max(axis=-1)
         mean = np.exp(ln_joint - top[..., None]).mean(axis=-1)
         evidence[:, i] = top + np.log(mean * span / err[:, None])
@@ -132,7 +132,7 @@ def _centre(zero: np.ndarray) -> float:
     return float(zero[0]) if np.ptp(zero) == 0 else 0.0
 
 
-def _invert(ln_p: np.ndarray, grid: np.ndarray) -> np.ndarray:
+def quantiles_on_grid(ln_p: np.ndarray, grid: np.ndarray) -> np.ndarray:
     """Quantiles at U_NODES of densities on grids (last axis); linear in the normal score, so exact for a normal."""
     p = np.exp(ln_p - ln_p.max(axis=-1, keepdims=True))
     grown = np.cumsum(0.5 * (p[..., 1:] + p[..., :-1]), axis=-1)

@@ -46,6 +46,7 @@ class Occupation:
     ln_first: np.ndarray  # the same for satellites that are the heaviest of their halo
     ln_central_of: np.ndarray  # [z, err, y, M]: per dex of y in one halo
     ln_satellites_of: np.ndarray  # the same for its satellites
+    ln_above_of: np.ndarray  # [z, err, y, M]: number of its satellites that show more than y
     host_mass: np.ndarray  # [z, err, y, u]: log10 M200c of a first satellite's host at normal score u
 
     def numbers(self, y, z, err) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
@@ -60,6 +61,10 @@ class Occupation:
         """Central and satellites [per dex of y] of one halo that show y."""
         at = [*_places(y, z, err), uniform_place(LOG_M, log_m200c)]
         return np.exp(multilinear(self.ln_central_of, at)), np.exp(multilinear(self.ln_satellites_of, at))
+
+    def above(self, y, z, err, log_m200c) -> np.ndarray:
+        """Number of satellites of one halo that show more than y."""
+        return np.exp(multilinear(self.ln_above_of, [*_places(y, z, err), uniform_place(LOG_M, log_m200c)]))
 
     def host(self, y, z, err, u) -> np.ndarray:
         """log10 M200c of the host of a first satellite that shows y, at normal score u."""
@@ -106,6 +111,7 @@ def _tabulate(cosmology_name: str) -> Occupation:
         ln_first=_ln((number * first).sum(axis=-1)),
         ln_central_of=_ln(central),
         ln_satellites_of=_ln(satellites),
+        ln_above_of=_ln(np.cumsum(satellites[:, :, ::-1], axis=2)[:, :, ::-1] * Y_STEP),
         host_mass=_quantiles(number * first),
     )
 

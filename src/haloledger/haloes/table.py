@@ -38,9 +38,14 @@ class Haloes:
     err_holds_z: np.ndarray  # bool: value_err contains the redshift error: the value does not follow the drawn redshift
     one_minus_b: np.ndarray  # hydrostatic bias: the mass is divided by it
     one_minus_b_err: np.ndarray
+    bias_share: np.ndarray  # weight of hydrostatic masses in the value
+    origin: np.ndarray  # what the mass rests on: "lx" "sz" "richness" "sigma_v" "luminosity", "" where not known
     catalogue: np.ndarray  # int: place of the catalogue among the user's
     precedence: np.ndarray  # int: lower gives centre and mass where two catalogues name one halo
     p_hosted: np.ndarray  # part of p_member: in those draws the row stands for a host that no list has, off its place
+    n_satellites: np.ndarray  # listed galaxies that this one is expected to hold, NaN where the list cannot tell
+    faintest: np.ndarray  # log10 stellar mass down to which the list has satellites there
+    list_share: np.ndarray  # completeness of the list
     n_members: np.ndarray  # listed for the group, NaN where not known
     members: np.ndarray  # ";"-joined rows of galaxies that this group holds for sure
     listed_group: np.ndarray  # "label:id" of the group the catalogue puts this galaxy in, "" where none
