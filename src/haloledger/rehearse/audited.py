@@ -12,6 +12,7 @@ from haloledger.cosmos.background import Cosmos
 from haloledger.engine.universe import Universe
 from haloledger.gas.models import load_model
 from haloledger.haloes.build import Haloes, halo_list
+from haloledger.ledger.nuisances import checked
 from haloledger.ledger.sightline_ledger import make_ledger, prepare
 from haloledger.rehearse.survey import Seen
 
@@ -20,15 +21,13 @@ Progress = Callable[[int, int, str], None]
 
 @dataclass(frozen=True)
 class Audited:
-    """Draws of the foreground sum of each line (n_lines, n_draws) [pc cm-3], and the entries' means."""
+    """Draws of the foreground sum of each line (n_lines, n_draws) [pc cm-3], and the mean of each entry in it."""
 
     sums: np.ndarray
     at_source: np.ndarray  # mean DM at the source (n_lines,)
     entry_line: np.ndarray
     entry_row: np.ndarray  # catalogue row that stands for the halo
-    entry_mean: np.ndarray
-    entry_p16: np.ndarray
-    entry_p84: np.ndarray
+    entry_front: np.ndarray  # mean DM in the foreground sum
     haloes: Haloes
 
 
@@ -39,21 +38,20 @@ def run_audit(
     tell(0, 1, "one list of haloes")
     haloes = halo_list([read_galaxies(t) for t in seen.galaxies], [read_groups(t) for t in seen.groups], cosmos)
     bursts = read_bursts(seen.bursts)
-    universe = Universe(seed=seed, n_draws=draws, held=hold)
+    universe = Universe(seed=seed, n_draws=draws, held=checked(hold))
     ground = prepare(bursts, haloes, [load_model(model)], [], universe, cosmos, None)
     n = len(bursts)
     sums, at_source = np.empty((n, draws), dtype=np.float32), np.empty(n)
-    entries: list[tuple] = []
+    line, row, front = [], [], []
     for i in range(n):
         tell(i, n, "sightlines")
         (ledger,) = make_ledger(ground, i, keep_draws=True)
         assert ledger.terms is not None
         sums[i] = ledger.terms["dm_foreground"]
         at_source[i] = ledger.terms["dm_at_source"].mean()
-        entries += [
-            (i, e["halo"], e["dm_mean"], e["dm_p16"], e["dm_p84"]) for e in ledger.entries if e["halo"] != "shared"
-        ]
-    line, row, mean, low, high = zip(*entries, strict=True) if entries else ((), (), (), (), ())
-    return Audited(
-        sums, at_source, np.array(line, int), np.array(row), np.array(mean), np.array(low), np.array(high), haloes
-    )
+        for entry in ledger.entries:
+            if entry.get("variance_share") is not None and entry["halo"] != "shared":  # None: at the source
+                line.append(i)
+                row.append(entry["halo"])
+                front.append(entry["dm_mean"])
+    return Audited(sums, at_source, np.array(line, dtype=int), np.array(row), np.array(front), haloes)

@@ -69,7 +69,7 @@ def tables(rank: np.ndarray, sums: np.ndarray, truth: np.ndarray) -> list[Calibr
 
 
 def crps(draws: np.ndarray, truth: np.ndarray) -> np.ndarray:
-    """Continuous ranked probability score of each line [pc cm-3]: mean |x - t| - mean |x - x'| / 2; smaller is better."""
+    """Continuous ranked probability score of each line [pc cm-3]: mean |x - t| - mean |x - x'| / 2; small is good."""
     k = draws.shape[1]
     ordered = np.sort(draws, axis=1).astype(float)
     weight = 2 * np.arange(1, k + 1) - k - 1

@@ -44,6 +44,13 @@ class Seen:
     listed: np.ndarray  # haloes of the sky of which a galaxy or the group is listed (n_haloes,)
     grouped: np.ndarray  # haloes with a group row
 
+    def halo_of(self, names, sky: Sky) -> np.ndarray:
+        """True halo behind each catalogue row "label:id"."""
+        ids = [str(name).rsplit(":", 1)[-1] for name in names]
+        number = np.array([int(i.lstrip("cdg")) for i in ids], dtype=int)
+        group = np.array([i.startswith("c") for i in ids], dtype=bool)
+        return np.where(group, number, sky.galaxies.halo[np.where(group, 0, number)])
+
 
 def look(sky: Sky, survey: Survey, cosmos: Cosmos, rng: np.random.Generator) -> Seen:
     """The sky through the survey."""
@@ -81,7 +88,9 @@ def _stellar_masses(sky: Sky, z_measured, cosmos: Cosmos) -> np.ndarray:
 
 def _rows(sky: Sky, survey: Survey, log_mstar, z_measured, cosmos: Cosmos) -> np.ndarray:
     """Galaxies above the flux limit and the least mass; hosts always."""
-    far = 2 * np.log10(cosmos.luminosity_distance_mpc(np.maximum(z_measured, 1e-3)) / cosmos.luminosity_distance_mpc(0.1))
+    far = 2 * np.log10(
+        cosmos.luminosity_distance_mpc(np.maximum(z_measured, 1e-3)) / cosmos.luminosity_distance_mpc(0.1)
+    )
     seen = (log_mstar > survey.depth + far) & (log_mstar > survey.least) & (z_measured > 1e-3)
     seen[sky.lines.host] = True
     return np.flatnonzero(seen)

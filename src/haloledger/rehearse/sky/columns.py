@@ -1,4 +1,4 @@
-"""True columns of the modified NFW gas of textbooks: kept x f_b M200c inside r200c, density y / (2 + y)^4, y = c r/r200c.
+"""True columns of the textbook's modified NFW: kept x f_b M200c inside r200c, density y / (2 + y)^4, y = c r / r200c.
 
 The line integral is done by Gauss-Legendre between the two ends of the line inside the sphere, or the burst.
 """
@@ -9,10 +9,20 @@ import numpy as np
 
 from haloledger.cosmos.background import Cosmos
 from haloledger.cosmos.electrons import CM3_PER_MSUN_KPC3, PC_PER_KPC, PER_PROTON
+from haloledger.errors import InputError
 
 OFFSET = 2.0
 KEPT = 0.75
 _NODES, _WEIGHTS = np.polynomial.legendre.leggauss(48)
+
+
+MODELS = ("textbook-modified-nfw",)
+
+
+def known_model(name: str) -> None:
+    """InputError where the sky has no columns for this model."""
+    if name not in MODELS:
+        raise InputError(f"--model {name}: the true sky has no gas of that kind. Write one of {', '.join(MODELS)}.")
 
 
 def enclosed(c200c) -> np.ndarray:

@@ -1,7 +1,12 @@
-"""Galaxies of haloes: one central each, and satellites that follow the same relation at their mass of infall.
+"""Galaxies of haloes: one central each, and satellites.
 
-Subhaloes are Poisson around amplitude x psi^-0.91 exp(-6 psi^3); the amplitude is set so that the wanted share of
-galaxies of 1e10 Msun are satellites. Satellites follow NFW inside r200c and move with the halo's velocity dispersion.
+"occupation"  satellites above a stellar mass: (M / Msat) exp(-Mcut / M), with Msat and Mcut power laws in the halo mass
+              Mh of a central of that stellar mass (Leauthaud et al. 2011, ApJ 738, 45, eq. 12-14; values for z 0.22 to
+              0.48 of Leauthaud et al. 2012, ApJ 744, 159, table 5, from memory); rarely one heavier than the central
+"subhaloes"   subhaloes are Poisson around amplitude x psi^-0.91 exp(-6 psi^3) and hold what the relation gives at their
+              mass of infall; the amplitude is set by the share of galaxies of 1e10 Msun that are satellites
+
+Satellites follow NFW inside r200c and move with the halo's velocity dispersion.
 """
 
 from __future__ import annotations
@@ -60,14 +65,22 @@ class Light:
 
 def stellar_masses(log_m, z, light: Light, cosmos: Cosmos, rng) -> tuple[np.ndarray, np.ndarray]:
     """True and measured log10 M* of galaxies formed in haloes of these masses."""
-    c200c = median_concentration(log_m, z, cosmos)
-    true = np.empty(len(log_m))
-    for k, name in enumerate(relations.NAMES):
-        rows = np.flatnonzero(light.relation == k)
-        mean = relations.mean_log_mstar(name, log_m[rows], z[rows], c200c[rows], cosmos)
-        spread = light.scatter_factor * relations.scatter_dex(name, z[rows])
-        true[rows] = mean + spread * rng.standard_normal(len(rows))
+    spread = light.scatter_factor * _scatter(z, light.relation)
+    true = _mean(log_m, z, light.relation, cosmos) + spread * rng.standard_normal(len(log_m))
     return true, true + light.zero_point + light.mass_err * rng.standard_normal(len(log_m))
+
+
+def _mean(log_m, z, relation, cosmos: Cosmos) -> np.ndarray:
+    c200c = median_concentration(log_m, z, cosmos)
+    result = np.empty(len(log_m))
+    for k, name in enumerate(relations.ALL):
+        rows = np.flatnonzero(relation == k)
+        result[rows] = relations.mean_log_mstar(name, log_m[rows], z[rows], c200c[rows], cosmos)
+    return result
+
+
+def _scatter(z, relation) -> np.ndarray:
+    return np.choose(relation, [relations.scatter_dex(name, z) for name in relations.ALL])
 
 
 def centrals(haloes: Haloes, masses: tuple[np.ndarray, np.ndarray]) -> Galaxies:
@@ -84,12 +97,17 @@ def centrals(haloes: Haloes, masses: tuple[np.ndarray, np.ndarray]) -> Galaxies:
     )
 
 
-def satellites(haloes: Haloes, light: Light, subhaloes: float, cosmos: Cosmos, rng) -> Galaxies:
-    """Satellites of all haloes; `subhaloes` is the amplitude of the subhalo mass function."""
-    floor = SUBHALO_LEAST - haloes.log_m200c
-    owner = np.repeat(np.arange(len(haloes)), rng.poisson(subhaloes * subhaloes_above(floor)))
-    mass = haloes.log_m200c[owner] + draw_log_psi(floor[owner], rng)
-    true, measured = stellar_masses(mass, haloes.z[owner], light.part(owner), cosmos, rng)
+SATELLITES = ("occupation", "subhaloes", "none")
+MSAT, MSAT_SLOPE, MCUT, MCUT_SLOPE = 12 + np.log10(10.62), 0.859, 12 + np.log10(1.47), -0.13
+
+
+def satellites(haloes: Haloes, light: Light, kind: str, share: float, z: float, cosmos: Cosmos, rng) -> Galaxies:
+    """Satellites of all haloes, by one of SATELLITES; `share` of the galaxies of 1e10 Msun at z, for subhaloes."""
+    if kind == "occupation":
+        owner, true, measured = _by_occupation(haloes, light, cosmos, rng)
+    else:
+        amount = amplitude(share, z, cosmos) if kind == "subhaloes" else 0.0
+        owner, true, measured = _by_subhaloes(haloes, light, amount, cosmos, rng)
     east, north, velocity = _orbits(haloes, owner, cosmos, rng)
     return Galaxies(
         halo=owner,
@@ -100,6 +118,32 @@ def satellites(haloes: Haloes, light: Light, subhaloes: float, cosmos: Cosmos, r
         east_mpc=haloes.east_mpc[owner] + east,
         north_mpc=haloes.north_mpc[owner] + north,
     )
+
+
+def _by_subhaloes(haloes: Haloes, light: Light, amount: float, cosmos: Cosmos, rng):
+    floor = SUBHALO_LEAST - haloes.log_m200c
+    owner = np.repeat(np.arange(len(haloes)), rng.poisson(amount * subhaloes_above(floor)))
+    mass = haloes.log_m200c[owner] + draw_log_psi(floor[owner], rng)
+    return owner, *stellar_masses(mass, haloes.z[owner], light.part(owner), cosmos, rng)
+
+
+def _by_occupation(haloes: Haloes, light: Light, cosmos: Cosmos, rng):
+    """Candidates without the cut fall as Mh^-0.859; each is kept with the share that the cut leaves there."""
+    log_m = haloes.log_m200c
+    most = 10 ** (log_m - MSAT - MSAT_SLOPE * (SUBHALO_LEAST - 12))
+    owner = np.repeat(np.arange(len(haloes)), rng.poisson(most))
+    mh = SUBHALO_LEAST - np.log10(1 - rng.random(len(owner))) / MSAT_SLOPE
+    cut = 10 ** (MCUT + MCUT_SLOPE * (mh - 12) - log_m[owner])
+    left = np.exp(-cut) * np.maximum(1 + MCUT_SLOPE / MSAT_SLOPE * cut, 0.0)
+    keep = rng.random(len(owner)) < left
+    owner, mh = owner[keep], mh[keep]
+    part, z = light.part(owner), haloes.z[owner]
+    true, limit = (_mean(m, z, part.relation, cosmos) for m in (mh, log_m[owner]))
+    spread = light.scatter_factor * _scatter(z, part.relation)
+    keep = (limit - true) > spread * rng.standard_normal(len(owner))
+    owner, true = owner[keep], true[keep]
+    noise = light.mass_err * rng.standard_normal(len(owner))
+    return owner, true, true + light.zero_point[owner] + noise
 
 
 def _orbits(haloes: Haloes, owner, cosmos: Cosmos, rng):

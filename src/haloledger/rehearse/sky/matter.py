@@ -1,7 +1,7 @@
 """A log-normal halo density in a periodic box, one field for each bias, all from the same phases.
 
-The Gaussian field of bias b has the correlation xi_g = ln(1 + b^2 xi), so that the halo density exp(g - var/2) has exactly
-the correlation b^2 xi(r), xi the linear matter correlation smoothed to the cells (Coles & Jones 1991, MNRAS 248, 1).
+The Gaussian field of bias b has the correlation xi_g = ln(1 + b^2 xi), so that the halo density exp(g - var/2) has the
+correlation b^2 xi(r), xi the linear matter correlation smoothed to the cells (Coles & Jones 1991, MNRAS 248, 1).
 """
 
 from __future__ import annotations

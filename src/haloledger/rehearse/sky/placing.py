@@ -7,6 +7,7 @@ patch the haloes of each class of mass are Poisson around mass function x volume
 from __future__ import annotations
 
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 
@@ -42,7 +43,7 @@ def class_of(log_m200c) -> np.ndarray:
 def class_bias(z: float, cosmos: Cosmos) -> np.ndarray:
     """Mean bias of each class, over its haloes."""
     means = []
-    for low, high in zip(CLASS_EDGES[:-1], CLASS_EDGES[1:], strict=True):
+    for low, high in pairwise(CLASS_EDGES):
         m = np.linspace(low, high, 30)
         means.append(np.average(halo_bias(m, z, cosmos), weights=mass_function(m, z, cosmos)))
     return np.array(means)

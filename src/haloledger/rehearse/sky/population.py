@@ -32,8 +32,8 @@ class Population:
     """
 
     def __init__(self, names, zero_dex: float, mass_err: float, scatter_factor: float, cosmos: Cosmos) -> None:
-        self.numbers = [k for k, name in enumerate(relations.NAMES) if name in names]
-        self.ln_phi = {k: _counts(relations.NAMES[k], mass_err, scatter_factor, cosmos) for k in self.numbers}
+        self.numbers = [k for k, name in enumerate(relations.ALL) if name in names]
+        self.ln_phi = {k: _counts(relations.ALL[k], mass_err, scatter_factor, cosmos) for k in self.numbers}
         shifts, weights = zero_dex * _NODES, _WEIGHTS / _WEIGHTS.sum()
         self.ln_mean = np.zeros((Z.size, Y.size))
         z, y = np.meshgrid(Z, Y, indexing="ij")

@@ -10,7 +10,7 @@ import numpy as np
 from haloledger.cosmos.background import Cosmos
 from haloledger.cosmos.mass_definitions import from_200c
 
-NAMES = ("behroozi2013", "behroozi2019", "kravtsov2018", "moster2013")
+NAMES = ("behroozi2013", "behroozi2019", "kravtsov2018", "moster2013")  # what a universe draws from
 
 
 def moster2013(m, z):
@@ -44,8 +44,15 @@ def behroozi2019(m, z):
 
 
 def kravtsov2018(m, z):
-    """Kravtsov, Vikhlinin & Meshcheryakov 2018, Astron. Lett. 44, 8, table 3 with 0.2 dex scatter; M200c, no evolution."""
+    """Kravtsov et al. 2018, Astron. Lett. 44, 8, table 3 with 0.2 dex scatter; M200c, no evolution."""
     return -1.642 + 11.35 + _bend(m - 11.35, -1.779, 4.394, 0.547)
+
+
+def girelli2020(m, z):
+    """Girelli et al. 2020, A&A 634, A135, eq. 6 and table 3; taken as M200c (to be checked). None of the audit's."""
+    m1, n = 11.79 + 0.20 * z, 0.046 * (1 + z) ** -0.38
+    x = 10 ** (m - m1)
+    return m + np.log10(2 * n / (x ** -(0.96 + 0.043 * z) + x ** (0.709 * (1 + z) ** -0.18)))
 
 
 def _bend(x, alpha, delta, gamma):
@@ -56,7 +63,8 @@ def _bend(x, alpha, delta, gamma):
     return f(x) - f(0.0)
 
 
-_MEAN = {"behroozi2013": behroozi2013, "behroozi2019": behroozi2019, "kravtsov2018": kravtsov2018, "moster2013": moster2013}
+_MEAN = {f.__name__: f for f in (behroozi2013, behroozi2019, kravtsov2018, moster2013, girelli2020)}
+ALL = tuple(_MEAN)
 _IN_VIRIAL_MASS = ("behroozi2013", "behroozi2019")
 
 
@@ -69,5 +77,7 @@ def mean_log_mstar(name: str, log_m200c, z, c200c, cosmos: Cosmos) -> np.ndarray
 def scatter_dex(name: str, z) -> np.ndarray:
     """Scatter of log10 M* at fixed halo mass [dex]: as published, or assumed by the authors (from memory)."""
     a = 1 / (1 + np.asarray(z))
-    value = {"moster2013": 0.15, "behroozi2019": 0.2, "kravtsov2018": 0.2, "behroozi2013": 0.218}[name]
+    value = {"moster2013": 0.15, "behroozi2019": 0.2, "kravtsov2018": 0.2, "behroozi2013": 0.218, "girelli2020": 0.2}[
+        name
+    ]
     return value + (-0.023 * (a - 1) if name == "behroozi2013" else 0 * a)

@@ -9,7 +9,7 @@ import numpy as np
 from haloledger.cosmos.background import Cosmos
 from haloledger.cosmos.mass_function import mass_function
 from haloledger.rehearse.sky import columns, relations
-from haloledger.rehearse.sky.galaxies import Light, amplitude, centrals, satellites, stellar_masses
+from haloledger.rehearse.sky.galaxies import Light, centrals, satellites, stellar_masses
 from haloledger.rehearse.sky.matter import make_box
 from haloledger.rehearse.sky.placing import class_bias, class_of, place_haloes
 from haloledger.rehearse.sky.population import Population
@@ -35,12 +35,14 @@ class Truth:
     lines: int = 2000
     z_range: tuple[float, float] = (0.1, 0.4)  # of the bursts
     behind: float = 0.02  # how far behind the bursts the tubes reach, in redshift
-    satellite_share: float = 0.28  # of galaxies of 1e10 Msun
+    satellites: str = "occupation"  # one of galaxies.SATELLITES
+    satellite_share: float = 0.28  # of galaxies of 1e10 Msun, for "subhaloes"
     scatter_factor: float = 1.0  # times the published scatter of stellar mass at fixed halo mass
-    relation: str = ""  # one of relations.NAMES for all lines; "" draws one a line
+    relation: str = ""  # one of relations.ALL for all lines; "" draws one a line
     zero_point_dex: float = 0.1
     mass_err: float = 0.15  # dex, of measured stellar masses
     same_counts: bool = True  # every universe shows the same numbers of galaxies: see `population`
+    triaxial: float = 0.0  # spread in ln of the depth of haloes along the line, at the cost of their width
     one_universe: bool = False  # all lines share one draw of the nuisances
     host_is_satellite: float = 0.25
     cells: int = 256
@@ -58,12 +60,12 @@ def simulate(truth: Truth, seed: int, cosmos: Cosmos) -> Sky:
     light = Light(relation[haloes.line], zero[haloes.line], truth.scatter_factor, truth.mass_err)
     of_hosts = stellar_masses(hosts.log_m200c, hosts.z, light.part(hosts.line), cosmos, draw("host masses"))
     own = centrals(haloes, tuple(np.concatenate(m) for m in zip(of_hosts, masses, strict=True)))
-    amount = amplitude(truth.satellite_share, Z_BOX, cosmos)
-    galaxies = join([own, satellites(haloes, light, amount, cosmos, draw("satellites"))])
+    others = satellites(haloes, light, truth.satellites, truth.satellite_share, Z_BOX, cosmos, draw("satellites"))
+    galaxies = join([own, others])
     galaxies, host_row = _satellite_hosts(galaxies, satellite, haloes, cosmos, draw("host orbits"))
     ra, dec = spread_on_sky(truth.lines)
     lines = Lines(ra, dec, z, galaxies.z_seen[host_row], relation, zero, kept, host_row)
-    return Sky(lines, haloes, galaxies, true_columns(haloes, z, cosmos), truth.mass_err)
+    return Sky(lines, haloes, galaxies, true_columns(haloes, z, truth.triaxial, cosmos, draw("shapes")), truth.mass_err)
 
 
 def _field(truth: Truth, z, relation, zero, cosmos: Cosmos, draw: _Streams):
@@ -101,7 +103,7 @@ def _nuisances(truth: Truth, rng: np.random.Generator):
     if truth.one_universe:
         relation, zero, kept = (np.full(n, a[0]) for a in (relation, zero, kept))
     if truth.relation:
-        relation = np.full(n, relations.NAMES.index(truth.relation))
+        relation = np.full(n, relations.ALL.index(truth.relation))
     return relation, zero, kept
 
 
@@ -184,15 +186,16 @@ def spread_on_sky(n: int) -> tuple[np.ndarray, np.ndarray]:
     return (k * 180 * (3 - 5**0.5)) % 360, np.degrees(np.arcsin(1 - 2 * k / n))
 
 
-def true_columns(haloes: Haloes, z_burst, cosmos: Cosmos) -> np.ndarray:
-    """Observer-frame DM [pc cm-3] of each halo on its line."""
+def true_columns(haloes: Haloes, z_burst, triaxial: float, cosmos: Cosmos, rng: np.random.Generator) -> np.ndarray:
+    """Observer-frame DM [pc cm-3] of each halo on its line; a halo q times as deep is q^-0.5 times as wide."""
     per_mpc = 1e3 / (1 + haloes.z)
-    impact = np.hypot(haloes.east_mpc, haloes.north_mpc) * per_mpc
+    deep = np.exp(triaxial * rng.standard_normal(len(haloes)))
+    impact = np.hypot(haloes.east_mpc, haloes.north_mpc) * per_mpc * np.sqrt(deep)
     r200c = cosmos.r200c_kpc(haloes.log_m200c, haloes.z)
     gap = cosmos.comoving_distance_mpc(z_burst)[haloes.line] - cosmos.comoving_distance_mpc(haloes.z)
     rows = np.flatnonzero(impact < r200c)
     part = pick(haloes, rows)
     dm = np.zeros(len(haloes))
-    behind = (gap * per_mpc)[rows]
+    behind = (gap * per_mpc / deep)[rows]
     dm[rows] = columns.column_rest(impact[rows], r200c[rows], part.log_m200c, part.c200c, behind, cosmos)
-    return dm / (1 + haloes.z)
+    return dm * deep / (1 + haloes.z)
