@@ -27,6 +27,7 @@ from haloledger.report.run_record import run_record
 from haloledger.sightlines.electron_model import electron_model
 from haloledger.sightlines.host import with_unknown_hosts
 from haloledger.sightlines.local import uncovered, with_local
+from haloledger.sightlines.members import with_member_discs
 
 Progress = Callable[[int, int, str], None]
 
@@ -115,6 +116,7 @@ def audit(
     tell(0, 1, "tables of the halo models")
     sightlines = with_unknown_hosts(hand.bursts, [*hand.galaxies, *hand.groups])
     own_gas = gas_by_hand(haloes, hand.rows, own_models)
+    haloes = with_member_discs(haloes, sightlines, hand.galaxies, cosmos)
     footprints_read = inputs.footprints
     ground = prepare(sightlines, haloes, gas, footprints_read, universe, cosmos, electrons, source_in_sum, own_gas)
     ledgers = _all_ledgers(ground, tell, keep_draws)

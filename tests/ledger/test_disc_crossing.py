@@ -118,3 +118,27 @@ def test_one_galaxy_has_one_inclination_for_all_its_lines(planck):
     ledgers = audit(table, galaxies=[sky.galaxies(row)], models=MODEL, draws=800, keep_draws=True)
     a, b = (np.log(ledgers.draws[ledgers.draws.burst == x].dm_disc_crossing.to_numpy()) for x in "AB")
     assert 0.3 < np.corrcoef(a, b)[0, 1] < 0.95  # the scatter from line to line is each line's own
+
+
+def test_a_member_of_a_listed_group_has_no_halo_but_its_disc_is_met(planck):
+    group = sky.group("C", z=0.05, log_mass=13.5, dec=sky.HERE[1] + 0.01)
+    member = disc_galaxy(planck, 5.0, group_id="C")
+    tables = {"galaxies": [sky.galaxies(member)], "groups": [sky.Table(rows=[group])]}
+    alone = audit(sky.bursts(sky.burst()), groups=tables["groups"], models=MODEL, draws=200)
+    both = audit(sky.bursts(sky.burst()), **tables, models=MODEL, draws=200)
+    assert both.to_pandas()[0].dm_foreground_mean[0] == alone.to_pandas()[0].dm_foreground_mean[0]
+    entry = both.to_pandas()[1].set_index("halo").loc["galaxies:G1"]
+    assert (entry.dm_mean, entry.p_member, entry.p_crossed) == (0.0, 1.0, 0.0)
+    assert entry.dm_disc_crossing_p50 > 5
+    assert "holds it: no gas halo of its own" in entry.note
+
+
+def test_members_on_one_line_change_no_other_line(planck):
+    group = sky.Table(rows=[sky.group("C", z=0.05, log_mass=13.5, dec=sky.HERE[1] + 0.01)])
+    table = sky.galaxies(disc_galaxy(planck, 5.0, group_id="C"), disc_galaxy(planck, 300.0) | {"id": "G2"})
+    far = {**sky.burst("B2"), "ra": sky.HERE[0] + 0.3}
+    alone, both = (
+        audit(sky.bursts(*rows), galaxies=[table], groups=[group], models=MODEL, draws=100).to_pandas()[0]
+        for rows in ((far,), (sky.burst(), far))
+    )
+    assert both[both.burst == "B2"].reset_index(drop=True).equals(alone)

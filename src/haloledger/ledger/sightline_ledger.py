@@ -94,7 +94,7 @@ def prepare(
 ) -> Ground:
     """Everything that is made once: who is near whom, and each model's census."""
     own_gas = own_gas or {}
-    listed = rows(haloes, np.flatnonzero(haloes.kind != LOCAL))
+    listed = rows(haloes, np.flatnonzero((haloes.kind != LOCAL) & (haloes.p_member < 1)))
     models = [*gas, *(own.model for own in own_gas.values() if own.model is not None)]
     return Ground(
         bursts=bursts,
