@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import numpy as np
+
 from haloledger.catalogs.canonical import Galaxies
 from haloledger.catalogs.prepare import Prepared
 from haloledger.catalogs.rows import (
@@ -14,8 +16,10 @@ from haloledger.catalogs.rows import (
     row_names,
 )
 from haloledger.catalogs.schema import BAND_SYSTEM, BANDS
+from haloledger.errors import InputError
 
 STELLAR_MASS_RANGE = (1.0, 14.0)  # log10 Msun; below, a cell is in units of 1e10, above, it is nobody's galaxy
+STAR = ("star", "s", "stellar", "point source")
 HALO_MASS_RANGE = (5.0, 17.0)
 
 
@@ -28,6 +32,7 @@ def galaxies_from(table: Prepared) -> Galaxies:
     rows.check_redshift()
     rows.check_log_mass("log_mstar", *STELLAR_MASS_RANGE)
     rows.check_log_mass("log_m200c", *HALO_MASS_RANGE)
+    _leave_out_stars(rows)
     photometric = photometric_rows(rows)
     index = rows.index()
     card = table.card
@@ -56,6 +61,7 @@ def galaxies_from(table: Prepared) -> Galaxies:
         mag={b: table.number(f"mag_{b}")[index] for b in bands},
         mag_system=system,
         mag_rest=card.magnitudes.rest_frame,
+        radius_arcsec=table.number("radius_arcsec")[index] if "radius_arcsec" in table.columns else None,
         z_outlier=card.redshift.outliers,
         z_flow=flow_redshift(table, index),
         z_is=card.redshift.taken_as,
@@ -65,3 +71,13 @@ def galaxies_from(table: Prepared) -> Galaxies:
         refused=rows.refusals(),
         **{name: values[index] for name, values in columns.items()},
     )
+
+
+def _leave_out_stars(rows: Rows) -> None:
+    """Rows that call themselves stars, with a note."""
+    star = np.isin(np.char.lower(rows.table.text("object_class").astype(str)), STAR)
+    if star.all() and len(star):
+        raise InputError(f"{rows.table.file}: every row is a 'star' in 'object_class'. Give a table of galaxies.")
+    if star.any():
+        rows.table.notes.append(f"{rows.table.label}: {int(star.sum())} rows left out: stars by 'object_class'")
+    rows.good &= ~star

@@ -45,6 +45,8 @@ FIELDS: dict[str, dict[str, Field]] = {
         "log_m200c": Field("Msun", "log10 halo mass M200c, no h", log=True),
         "log_m200c_err": Field("dex", "its error", not_negative=True),
         **_DISTANCE,
+        "radius_arcsec": Field("arcsec", "optical radius, such as that at 25 mag per square arcsec", not_negative=True),
+        "object_class": Field("", "'star' rows are left out", text=True),
         "group_id": Field("", "id of the listed group it belongs to", text=True),
         **{f"mag_{band}": Field("mag", f"apparent magnitude, {band}") for band in BANDS},
     },

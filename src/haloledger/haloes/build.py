@@ -22,6 +22,7 @@ from haloledger.haloes.distances import (
     z_floor,
 )
 from haloledger.haloes.doubles import merge_galaxies, merge_groups, rows_in_order
+from haloledger.haloes.hygiene import without_pieces, without_twins
 from haloledger.haloes.listing import galaxy_haloes, group_haloes
 from haloledger.haloes.masses import State, log_m200c
 from haloledger.haloes.membership import MASS_SCORES, Membership, memberships, published
@@ -72,10 +73,16 @@ def halo_list(
     if group_parts:
         merged_groups = _merge_groups(join(group_parts), combine, notes, cosmos)
     if galaxy_parts:
+        galaxy_parts = [
+            _tidy(without_twins, part, "Galaxy rows listed twice in {}: {}.", notes, cosmos) for part in galaxy_parts
+        ]
         merged_galaxies = merge_galaxies(galaxy_parts, cosmos)
         doubles = sum(map(len, galaxy_parts)) - len(merged_galaxies)
         if doubles:
             notes.append(f"Galaxies listed in more than one catalogue, counted once: {doubles}.")
+        merged_galaxies = _tidy(
+            without_pieces, merged_galaxies, "Pieces of larger galaxies, not counted: {1}.", notes, cosmos
+        )
     if merged_galaxies is not None and membership:
         merged_galaxies, merged_groups = _without_members(merged_galaxies, merged_groups, notes, cosmos)
     parts = [p for p in (merged_groups, merged_galaxies) if p is not None]
@@ -83,6 +90,13 @@ def halo_list(
         raise InputError("no catalogue given. Name at least one with --galaxies or --groups.")
     whole = join(parts)
     return rows_in_order(change(whole, notes=(*whole.notes, *notes)))
+
+
+def _tidy(rule, galaxies: Haloes, said: str, notes: list[str], cosmos: Cosmos) -> Haloes:
+    kept, gone = rule(galaxies, cosmos)
+    if gone:
+        notes.append(said.format(str(galaxies.id[0]).split(":", 1)[0], gone))
+    return kept
 
 
 def point_mass(

@@ -202,6 +202,10 @@ def _nearest_first(i, j, apart) -> tuple[np.ndarray, np.ndarray]:
     return found[:, 0], found[:, 1]
 
 
+def _lacks(a: np.ndarray, b: np.ndarray) -> np.ndarray:
+    return np.isnan(a) & np.isfinite(b)
+
+
 def _absorb(a: Haloes, i: np.ndarray, b: Haloes, cosmos: Cosmos) -> Haloes:
     """Rows i of a, each completed by its double in b; a mass from light follows a distance that is filled in."""
     columns = {name: getattr(a, name).copy() for name in COLUMNS}
@@ -209,12 +213,13 @@ def _absorb(a: Haloes, i: np.ndarray, b: Haloes, cosmos: Cosmos) -> Haloes:
     columns["source_rows"][i] = names
     notes = a.note[i].copy()
     for what, fill, names_filled in (
-        ("distance", np.isnan(a.distance_mpc[i]) & np.isfinite(b.distance_mpc), ("distance_mpc", "distance_err_mpc")),
+        ("distance", _lacks(a.distance_mpc[i], b.distance_mpc), ("distance_mpc", "distance_err_mpc")),
         (
             "spectroscopic redshift",
             a.photometric[i] & ~b.photometric,
             ("z", "z_flow", "z_err", "photometric", "z_outlier", "z_posterior"),
         ),
+        ("optical radius", _lacks(a.optical_radius_kpc[i], b.optical_radius_kpc), ("optical_radius_kpc",)),
         ("group", (a.listed_group[i] == "") & (b.listed_group != ""), ("listed_group",)),
     ):
         for name in names_filled:

@@ -30,6 +30,7 @@ def galaxy_haloes(galaxies: Galaxies, catalogue: int, cosmos: Cosmos) -> Haloes:
     from_light = np.isnan(galaxies.log_mstar) & ~listed
     columns = _shared(galaxies, catalogue, cosmos) | {
         "kind": np.full(n, "galaxy"),
+        "optical_radius_kpc": _optical_radius_kpc(galaxies, cosmos),
         "log_mstar": stellar.log_mstar,
         "centre_err_kpc": np.zeros(n),
         "note": np.where(listed, "halo mass as listed", stellar.note.astype(str)).astype(object),
@@ -100,6 +101,7 @@ def _shared(table: Galaxies | Groups, catalogue: int, cosmos: Cosmos) -> dict[st
         "z_outlier": np.where(table.photometric, getattr(table, "z_outlier", 0.0), 0.0),
         "distance_mpc": np.asarray(table.distance_mpc, dtype=float),
         "distance_err_mpc": np.asarray(table.distance_err_mpc, dtype=float),
+        "optical_radius_kpc": np.full(n, np.nan),
         "p_member": np.zeros(n),
         "p_hosted": np.zeros(n),
         "bias_share": np.ones(n),
@@ -119,6 +121,12 @@ def _shared(table: Galaxies | Groups, catalogue: int, cosmos: Cosmos) -> dict[st
         "precedence": np.full(n, 50),
         "listed_group": np.full(n, "", dtype=object),
     }
+
+
+def _optical_radius_kpc(galaxies: Galaxies, cosmos: Cosmos) -> np.ndarray:
+    if galaxies.radius_arcsec is None:
+        return np.full(len(galaxies), np.nan)
+    return np.radians(galaxies.radius_arcsec / 3600) * cosmos.angular_distance_kpc(point_redshift(galaxies, cosmos))
 
 
 def _flow(table: Galaxies | Groups, z_given: np.ndarray, cosmos: Cosmos) -> np.ndarray:

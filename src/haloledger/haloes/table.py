@@ -24,6 +24,7 @@ class Haloes:
     distance_mpc: np.ndarray  # luminosity distance, NaN where none
     distance_err_mpc: np.ndarray
     log_mstar: np.ndarray  # NaN for groups
+    optical_radius_kpc: np.ndarray  # NaN where not known
     p_member: np.ndarray  # probability that it is no centre of a halo of its own: a satellite
     centre_err_kpc: np.ndarray  # 1 sigma per axis
     note: np.ndarray
