@@ -59,8 +59,9 @@ def sightline(burst, model, ra, dec, z, dm, foreground, n_haloes, **more) -> dic
         "dm_mw_disc": (42.0, 34.0, 50.0), "dm_mw_halo": (31.0, 18.0, 44.0), "dm_foreground": foreground,
         "dm_unlisted": (18.0, 9.0, 25.0), "dm_diffuse": (160.0, 118.0, 190.0), "dm_at_source": (0.0, 0.0, 0.0),
         "dm_cosmic_mean_z": (210.0, 160.0, 250.0), "dm_cosmic_with_foreground": (330.0, 260.0, 390.0),
-        "dm_host_obs": (62.0, 24.0, 97.0),
+        "dm_host_obs": (62.0, 24.0, 97.0), "dm_disc_crossing": (0.0, 0.0, 0.0),
     }  # fmt: skip
+    terms |= more.pop("terms", {})
     if np.isfinite(z):
         row["z"] = z
         left = dm - sum(terms[t][0] for t in terms if "cosmic" not in t)

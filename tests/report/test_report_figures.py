@@ -5,11 +5,13 @@ import pytest
 from astropy import units as u
 from astropy.coordinates import SkyCoord
 from matplotlib.patches import Circle
+from matplotlib.text import Annotation, Text
 from synthetic import ledgers as make
 
 from haloledger.errors import InputError
 from haloledger.report.figures import model_figure, save, sightline_figure
-from haloledger.report.figures.sky import emptiest_corner, offsets, sky_haloes
+from haloledger.report.figures.sky import colour_norm, draw_sky, emptiest_corner, offsets, sky_haloes
+from haloledger.report.figures.style import new_figure
 from haloledger.report.views import view
 from haloledger.report.write import write
 
@@ -76,12 +78,78 @@ def test_a_localisation_too_small_to_see_is_a_cross(ledgers):
 
 def test_picture_says_what_the_tables_say(ledgers):
     said = words(sightline_figure(ledgers, "FRB20990101A"))
-    for part in ("130  (98.0 to 165)", "160  (120 to 200)", "104  (78.0 to 130)", "observed 612", "139  (69.0 to 199)"):
+    for part in ("130  (98.0 to 165)", "160  (120 to 200)", "104  (78.0 to 130)", "observed 612", "134  (69.0 to 199)"):
         assert part in said
     second = words(sightline_figure(ledgers, "FRB20990202B", "strong-feedback"))
     assert "no redshift given" in second
     assert "sum, strong-feedback" in second
     assert "nan" not in second
+
+
+def test_left_over_is_a_bar_of_the_median_with_its_whole_interval_in_view(ledgers):
+    figure = sightline_figure(ledgers, "FRB20990101A")
+    (axes,) = [a for a in figure.axes if patches(a, "left over")]
+    (bar,) = patches(axes, "left over")
+    left = view(ledgers, "FRB20990101A").terms["dm_after_all"]
+    assert (bar.get_x(), bar.get_width()) == pytest.approx((0, left.p50))
+    for name, value in {"p16": -531.0, "p50": -212.0, "p84": 900.0}.items():
+        ledgers.sightlines[f"dm_after_all_{name}"][0] = value * ledgers.sightlines["dm"].unit
+    wide = sightline_figure(ledgers, "FRB20990101A")
+    (axes,) = [a for a in wide.axes if patches(a, "left over")]
+    low, high = axes.get_xlim()
+    assert low < -531
+    assert high > 900
+
+
+def texts(axes):
+    axes.figure.canvas.draw()
+    return [t for t in axes.findobj(Text) if t.get_text() and t.get_visible()]
+
+
+@pytest.mark.parametrize("more_models", [2, 9])
+def test_labels_of_bars_stay_apart_and_inside(more_models):
+    names = tuple(f"model-with-a-long-name-{i}" for i in range(more_models))
+    figure = sightline_figure(make(models=names, halo="a_long_survey_name:cluster-of-"), "FRB20990101A")
+    (axes,) = [a for a in figure.axes if a.get_title("left") == "What each halo adds"]
+    page, inside = figure.bbox, axes.get_window_extent()
+    boxes = [t.get_window_extent() for t in texts(axes) if isinstance(t, Annotation)]
+    assert len(boxes) > 2 * more_models
+    assert all(b.x1 <= min(page.x1, inside.x1 + 3) for b in boxes)  # three pixels: the edge of a letter
+    overlaps = [(a, b) for i, a in enumerate(boxes) for b in boxes[:i] if a.overlaps(b) and min(a.x1, b.x1) > 0]
+    assert not [(a, b) for a, b in overlaps if min(a.y1, b.y1) - max(a.y0, b.y0) > 2]
+    assert (figure.get_size_inches()[1] > 8.5) == (more_models == 9)  # it grows
+
+
+def test_every_halo_in_view_has_its_number():
+    from haloledger.report.figures.sky import SkyHalo, out_of_view
+
+    haloes = [
+        SkyHalo(0.2, 0.1, 1.0, 5.0, 1),
+        SkyHalo(20.0, -15.0, 18.0, 2.0, 2),  # only its edge is in view
+        SkyHalo(40.0, 0.0, 60.0, 2.0, 3),  # fills the view
+        SkyHalo(40.0, 40.0, 3.0, 1.0, 4),  # far outside
+    ]
+    axes = new_figure(6, 6).add_axes((0, 0, 1, 1))
+    draw_sky(axes, haloes, (np.nan,) * 3, 8.0, colour_norm(haloes))
+    places = {t.get_text(): t.get_position() for t in axes.texts}
+    assert set(places) == {"1", "2", "3"}
+    assert all(max(map(abs, place)) < 8.0 for place in places.values())
+    assert np.hypot(places["2"][0] - 20, places["2"][1] + 15) < 18  # on its halo
+    assert out_of_view(haloes, 8.0) == [4]
+
+
+def test_minus_signs_are_those_of_the_tables(ledgers):
+    assert "\N{MINUS SIGN}" not in words(sightline_figure(ledgers, "FRB20990101A"))
+
+
+def test_held_nuisances_and_a_mean_beyond_its_interval_are_on_the_picture(ledgers):
+    ledgers.run["options"] = {"draws": 20, "hold": {"mw_disc": "0.5"}}
+    said = words(sightline_figure(ledgers, "FRB20990101A"))
+    assert "held: mw_disc = 0.5 (scale)" in said
+    assert "intervals are rough" in said
+    assert "a mean outside" not in said
+    ledgers.entries["dm_p84"][0] = 100 * ledgers.entries["dm_p84"].unit
+    assert "a mean outside" in words(sightline_figure(ledgers, "FRB20990101A"))
 
 
 def test_a_clean_sightline_has_a_picture(ledgers):

@@ -191,8 +191,9 @@ def test_file_names_are_clean_and_different():
     assert file_names(["a/b", "a b", "A_B"]) == {"a/b": "a_b", "a b": "a_b-2", "A_B": "A_B-3"}
 
 
-def test_long_names_keep_both_ends():
-    assert shorten("kourkchi-tully:700028630", 22) == "kourkchi-t…y:700028630"
+def test_long_names_keep_both_ends_and_their_catalogue():
+    assert shorten("kourkchi-tully:700028630", 22) == "kourkchi-tully:700…630"
+    assert shorten("kourkchi-tully:700028630", 20) == "kourkchi-…:700028630"  # no room for the whole label
     assert shorten("short", 22) == "short"
     assert [len(shorten("x" * 40, n)) for n in (8, 9, 40)] == [8, 9, 40]
 

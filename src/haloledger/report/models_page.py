@@ -26,14 +26,20 @@ def show_models(inventories: Sequence[Any], few: Sequence[float], to: Console) -
     """A line a model: status, boundary, kept fractions at the masses `few`, validity; then a sentence each."""
     names = [i.model.name for i in inventories]
     columns = [
-        Cells("status", [i.model.status for i in inventories], words=True),
+        Cells("status", [i.model.status for i in inventories], spare=len(few), words=True),
         Cells("edge/r200c", [f"{i.model.boundary_r200c:g}" for i in inventories]),
-        *(Cells(f"kept {log_m:g}", [_three(i, k) for i in inventories], words=True) for k, log_m in enumerate(few)),
-        Cells("log M200c", [_range(i.model.log_mass_range) for i in inventories], spare=2),
-        Cells("z", [_range(i.model.z_range) for i in inventories], spare=3),
+        *(
+            Cells(f"kept {log_m:g}", [_three(i, k) for i in inventories], spare=k, words=True)
+            for k, log_m in enumerate(few)
+        ),
+        Cells("log M200c", [_range(i.model.log_mass_range) for i in inventories], spare=len(few) + 1),
+        Cells("z", [_range(i.model.z_range) for i in inventories], spare=len(few) + 2),
     ]
     radii = f"kept fraction inside {', '.join(inventories[0].kept)}, at log10 M200c {', '.join(f'{m:g}' for m in few)}"
-    parts: list[RenderableType] = [grid("model", names, columns, to.width, title=radii), sentence(KEY, "dim"), Text()]
+    parts: list[RenderableType] = [grid("model", names, columns, to.width, title=radii), sentence(KEY, "dim")]
+    if to.width < sum(c.width for c in columns) + max(map(len, names)):
+        parts.append(sentence("A wider screen shows more columns.", "dim"))
+    parts.append(Text())
     for each in inventories:
         parts += [sentence(each.model.name, "bold"), indented(sentence(each.model.summary))]
     hint = "One model in full: haloledger models NAME; a picture: haloledger models NAME --plot FILE.png"

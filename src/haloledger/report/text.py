@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 
-from haloledger.report.views import EntryView, SightlineView, Spread
+from haloledger.report.views import VISIBLE, EntryView, Settings, SightlineView, Spread
 
 NONE = "-"  # what is not known, not determined or not assessed
 
@@ -12,6 +12,19 @@ CAUTION = (
     "The numbers rest on gas models that observations do not yet settle, on photometric redshifts and on incomplete "
     "catalogues: nothing found is not nothing there. Weigh them; they are no measurement of the gas."
 )
+
+
+MEAN_OUTSIDE = "a mean outside its 16 to 84 % range: most draws miss the halo, a few cross it"
+FEW_DRAWS = 100
+HELD_UNIT = {
+    "relation": "stellar-to-halo relation",
+    "zero_point": "dex",
+    "hydrostatic_bias": "1-b",
+    "kept": "dex",
+    "mw_disc": "scale",
+    "mw_halo": "pc cm-3",
+    "host_rest": "pc cm-3, rest frame",
+}
 
 
 def number(value: float, decimals: int = 1) -> str:
@@ -49,11 +62,13 @@ def redshift(value: float, kind: str = "") -> str:
 
 
 def mass(spread: Spread) -> str:
-    """log10 M200c with half its 16 to 84 % interval."""
+    """log10 M200c, median with half its 16 to 84 % interval; two decimals where it has none."""
     if not math.isfinite(spread.p50):
         return NONE
     half = (spread.p84 - spread.p16) / 2
-    return f"{spread.p50:.1f} ±{half:.1f}" if half >= 0.05 else f"{spread.p50:.1f}"
+    if half <= 0:
+        return f"{spread.p50:.2f}"
+    return f"{spread.p50:.1f} ±{half:.1f}" if half >= 0.05 else f"{spread.p50:.1f} ±<0.1"
 
 
 def length(value: float) -> str:
@@ -61,9 +76,9 @@ def length(value: float) -> str:
     return number(value, 0 if value >= 9.95 else 1)
 
 
-def counted(n: int, what: str) -> str:
-    """A number of things: 1 row, 3 rows."""
-    return f"{n} {what}{'' if n == 1 else 's'}"
+def counted(n: int, what: str, several: str = "") -> str:
+    """A number of things: 1 row, 3 rows; `several` where the plural is another."""
+    return f"{n} {what if n == 1 else several or what + 's'}"
 
 
 def angle(arcsec: float) -> str:
@@ -92,28 +107,51 @@ def source(view: SightlineView) -> str:
 
 
 def judged(view: SightlineView) -> str:
-    """Reach, controls and verdict in one line; says so where they were not assessed."""
-    if not view.verdict and not math.isfinite(view.reach) and not math.isfinite(view.control_p):
-        return f"reach {NONE}   controls {NONE}   verdict {NONE}   (not assessed)"
-    verdict = f"{view.verdict or NONE}{f' ({view.reasons})' if view.reasons else ''}"
-    return f"reach {percent(view.reach)}   controls {number(view.control_p, 3)}   verdict {verdict}"
+    """Reach, controls and verdict in one line, as far as they are known; "" where none was assessed."""
+    verdict = f"verdict {view.verdict}{f' ({view.reasons})' if view.reasons else ''}" if view.verdict else ""
+    reach = f"reach {percent(view.reach)}" if math.isfinite(view.reach) else ""
+    controls = f"controls {number(view.control_p, 3)}" if math.isfinite(view.control_p) else ""
+    return "   ".join(part for part in (reach, controls, verdict) if part)
 
 
-def notes(models: list[SightlineView]) -> list[str]:
-    """What the rows of one burst say, each thing once; with the model's name where it is not true of all models."""
-    said: dict[str, list[str]] = {}
-    for each in models:
-        for part in dict.fromkeys(p.strip().rstrip(".") for p in each.note.split(";")):
-            if part:
-                said.setdefault(part, []).append(each.model)
-    everywhere = [part for part, names in said.items() if len(names) == len(models)]
-    some = [f"{', '.join(names)}: {part}" for part, names in said.items() if len(names) < len(models)]
-    return (["; ".join(everywhere)] if everywhere else []) + some
+def conditions(settings: Settings) -> list[str]:
+    """What was held or switched off, and whether there are too few draws: to be read before the numbers."""
+    lines = []
+    if settings.fixed:
+        from haloledger.haloes.nuisances import FIXED_RELATION
+
+        relation = settings.held.get("relation", FIXED_RELATION)
+        # Tinker et al. 2008 prior, 0.15 to 0.2 dex of scatter: the inversion alone is 0.42 to 0.67 dex too heavy
+        much = " (by 0.5 dex at log M* = 11.3)" if relation == FIXED_RELATION else ""
+        lines.append(
+            f"fixed: no spread and no intervals. Halo masses from stellar masses: {relation} inverted without scatter "
+            f"or prior, which is too heavy at the massive end{much}."
+        )
+    elif settings.draws is not None and settings.draws < FEW_DRAWS:
+        lines.append(f"{counted(settings.draws, 'draw')}: intervals are rough. --draws 1000 for numbers to quote.")
+    if settings.held:
+        lines.append(f"held: {', '.join(_held(name, value) for name, value in settings.held.items())}")
+    return lines
+
+
+def _held(name: str, value: str) -> str:
+    unit = HELD_UNIT.get(name, "")
+    if name == "mw_halo" and not _is_number(value):
+        unit = "law"
+    return f"{name} = {value}{f' ({unit})' if unit else ''}"
+
+
+def _is_number(value: str) -> bool:
+    try:
+        float(value)
+    except ValueError:
+        return False
+    return True
 
 
 def with_dm(view: SightlineView) -> list[EntryView]:
-    """Foreground entries that add DM in at least some draws, most first."""
-    return [e for e in view.entries if e.dm.mean > 0 and not e.at_source]
+    """Foreground entries that add DM in at least some draws, by halo gas or a disc, most first."""
+    return [e for e in view.entries if (e.dm.mean > 0 or e.disc.mean > 0) and not e.at_source]
 
 
 def at_source(view: SightlineView) -> list[EntryView]:
@@ -122,8 +160,10 @@ def at_source(view: SightlineView) -> list[EntryView]:
 
 
 def worth_a_line(view: SightlineView, most: int) -> list[EntryView]:
-    """Foreground entries to show one by one: the two largest, and up to `most` with 1 % of all haloes' DM or more."""
+    """Foreground entries to show one by one: the two largest, up to `most` with 1 % of all haloes' DM or more, and
+    those whose disc adds something."""
     lines = with_dm(view)
     floor = 0.01 * sum(e.dm.mean for e in lines + at_source(view))
     large = sum(e.dm.mean >= floor for e in lines)
-    return lines[: min(max(large, 2), most)]
+    shown = lines[: min(max(large, 2), most)]
+    return shown + [e for e in lines[len(shown) : most] if e.disc.mean >= VISIBLE]

@@ -12,7 +12,7 @@ import numpy as np
 from astropy.table import Table
 
 from haloledger.errors import InputError
-from haloledger.ledger.budget import TERMS
+from haloledger.ledger.budget import EXTRA_TERMS, TERMS
 
 SHARED = "shared"  # the row of `entries` that is no halo: what all haloes of a draw have in common
 
@@ -20,11 +20,15 @@ BUDGET = {  # terms that add up to the observed DM, in the order light meets the
     "dm_mw_disc": "Milky Way disc",
     "dm_mw_halo": "Milky Way halo",
     "dm_foreground": "foreground haloes, listed",
+    "dm_disc_crossing": "discs of galaxies crossed",
     "dm_unlisted": "foreground haloes, unlisted",
     "dm_diffuse": "diffuse cosmic gas",
     "dm_at_source": "haloes at the source",
     "dm_host_obs": "host galaxy",
 }
+SOMETIMES = ("dm_disc_crossing", "dm_at_source")  # terms most sightlines do not have: shown where they are not zero
+HOLDS_BURST = "the burst sits in this halo"  # so begins the note of such an entry
+VISIBLE = 0.05  # pc cm-3: less is 0.0 in print
 
 
 @dataclass(frozen=True)
@@ -39,6 +43,25 @@ class Spread:
     @property
     def known(self) -> bool:
         return bool(np.isfinite(self.mean) or np.isfinite(self.p50))
+
+    @property
+    def zero(self) -> bool:
+        """Nothing in any draw, or not known."""
+        return not (self.known and (self.mean != 0 or self.p50 != 0))
+
+    @property
+    def mean_outside(self) -> bool:
+        """Whether the printed mean lies outside the printed interval."""
+        return bool(self.mean > self.p84 + VISIBLE or self.mean < self.p16 - VISIBLE)
+
+
+@dataclass(frozen=True)
+class Settings:
+    """How the ledgers were made, as far as a reader of the page has to know."""
+
+    fixed: bool = False
+    draws: int | None = None
+    held: dict[str, str] = field(default_factory=dict)
 
 
 @dataclass(frozen=True)
@@ -61,11 +84,17 @@ class EntryView:
     dm: Spread
     share: float
     note: str
+    disc: Spread = Spread()
 
     @property
     def at_source(self) -> bool:
         """Whether the burst sits in this halo: it adds DM, but has no share of the foreground sum."""
         return bool(self.dm.mean > 0 and not np.isfinite(self.share))
+
+    @property
+    def holds_burst(self) -> bool:
+        """Whether the burst sits in this halo, in the sum or not."""
+        return self.at_source or HOLDS_BURST in self.note
 
 
 @dataclass(frozen=True)
@@ -87,6 +116,18 @@ class SightlineView:
     note: str
     terms: dict[str, Spread]
     entries: list[EntryView] = field(default_factory=list)
+
+    @property
+    def budget(self) -> dict[str, str]:
+        """Terms to show, by name: all of BUDGET but those of SOMETIMES that are zero here."""
+        return {t: name for t, name in BUDGET.items() if not (t in SOMETIMES and self.terms[t].zero)}
+
+
+def settings(ledgers: Any) -> Settings:
+    """What the run's record says of draws and of what was held."""
+    options = ledgers.run.get("options", {})
+    held = {str(name): str(value) for name, value in options.get("hold", {}).items()}
+    return Settings(bool(options.get("fixed", False)), options.get("draws"), held)
 
 
 def views(ledgers: Any) -> list[SightlineView]:
@@ -172,7 +213,7 @@ def _sightline(columns: dict[str, list], i: int, entries: dict[tuple[str, str], 
         model=model,
         n_haloes=int(haloes) if np.isfinite(haloes) else 0,
         n_crossed=_number(columns, "n_crossed_mean", i),
-        terms={term: _spread(columns, term, i) for term in TERMS},
+        terms={term: _spread(columns, term, i) for term in TERMS + EXTRA_TERMS},
         entries=entries.get((burst, model), []),
         **cells,
     )
@@ -197,5 +238,6 @@ def _entry(columns: dict[str, list], i: int) -> EntryView:
         log_m200c=_spread(columns, "log_m200c", i),
         impact_kpc=_spread(columns, "impact_kpc", i),
         dm=_spread(columns, "dm", i),
+        disc=_spread(columns, "dm_disc_crossing", i),
         **cells,
     )

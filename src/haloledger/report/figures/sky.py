@@ -147,27 +147,50 @@ def _numbers(axes: Axes, haloes: list[SkyHalo], radius: float, colours, norm: Lo
     taken: list[tuple[float, float]] = [(0.0, 0.0)]
     clear = (0.17 if small else 0.062) * radius
     for h in sorted((h for h in haloes if h.number), key=lambda h: h.number):
-        if max(abs(h.x), abs(h.y)) > 0.97 * radius:
+        anchor = _anchor(h, radius)
+        if anchor is None:
             continue
-        x, y = _free_place(h, taken, clear, radius)
+        x, y = _free_place(anchor, taken, clear, radius)
         taken.append((x, y))
-        if np.hypot(x - h.x, y - h.y) > 0.5 * clear:
-            axes.plot([h.x, x], [h.y, y], color=INK, linewidth=0.6, zorder=6)
+        if np.hypot(x - anchor[0], y - anchor[1]) > 0.5 * clear:
+            axes.plot([anchor[0], x], [anchor[1], y], color=INK, linewidth=0.6, zorder=6)
         dark = colours(norm(h.dm)) if h.dm > 0 else QUIET
         box = {"boxstyle": "circle,pad=0.22", "facecolor": "white", "edgecolor": dark, "linewidth": 1.1}
         axes.text(x, y, str(h.number), ha="center", va="center", fontsize=7.5 if small else 8.5, bbox=box, zorder=7)
 
 
-def _free_place(h: SkyHalo, taken: list[tuple[float, float]], clear: float, radius: float) -> tuple[float, float]:
-    """The centre, or the nearest place on widening rings round it that no other number holds."""
-    for ring in range(8):
+def _anchor(h: SkyHalo, radius: float) -> tuple[float, float] | None:
+    """Where a halo is numbered: its centre, or the place of it in view that is nearest to the centre; None outside."""
+    edge = 0.94 * radius
+    if max(abs(h.x), abs(h.y)) <= edge:
+        return h.x, h.y
+    turn = np.linspace(0, 2 * np.pi, 720, endpoint=False)
+    x, y = h.x + 0.97 * h.radius * np.cos(turn), h.y + 0.97 * h.radius * np.sin(turn)
+    seen = np.flatnonzero((abs(x) < edge) & (abs(y) < edge))
+    if seen.size:
+        middle = seen[np.argmin(np.hypot(x[seen], y[seen]))]
+        return float(x[middle]), float(y[middle])
+    held = float(np.clip(h.x, -edge, edge)), float(np.clip(h.y, -edge, edge))
+    return held if np.hypot(held[0] - h.x, held[1] - h.y) < h.radius else None  # a halo that fills the whole view
+
+
+def out_of_view(haloes: list[SkyHalo], radius: float) -> list[int]:
+    """Numbers of the haloes that a field of half-width `radius` [arcmin] does not reach."""
+    return sorted(h.number for h in haloes if h.number and _anchor(h, radius) is None)
+
+
+def _free_place(
+    at: tuple[float, float], taken: list[tuple[float, float]], clear: float, radius: float
+) -> tuple[float, float]:
+    """The place itself, or the nearest one on widening rings round it that no other number holds."""
+    for ring in range(12):
         for turn in range(12 if ring else 1):
             angle = 2 * np.pi * turn / 12 + 0.4
-            x, y = h.x + ring * 0.8 * clear * np.cos(angle), h.y + ring * 0.8 * clear * np.sin(angle)
+            x, y = at[0] + ring * 0.8 * clear * np.cos(angle), at[1] + ring * 0.8 * clear * np.sin(angle)
             inside = max(abs(x), abs(y)) < 0.95 * radius
             if inside and all(np.hypot(x - a, y - b) > clear for a, b in taken):
                 return x, y
-    return h.x, h.y
+    return at
 
 
 def _footprint(axes: Axes, radius: float, covered: Callable[[np.ndarray, np.ndarray], np.ndarray]) -> None:

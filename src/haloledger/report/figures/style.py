@@ -6,9 +6,11 @@ from pathlib import Path
 from typing import Any
 
 from matplotlib import colormaps, rc_context
+from matplotlib.axis import Axis
 from matplotlib.backends.backend_agg import FigureCanvasAgg
 from matplotlib.colors import Colormap, ListedColormap
 from matplotlib.figure import Figure
+from matplotlib.ticker import FuncFormatter
 
 from haloledger.errors import InputError
 from haloledger.report.names import shorten
@@ -52,6 +54,11 @@ def styled():
 def dm_colours() -> Colormap:
     """Light to dark with DM; the palest part is left out so that every halo is seen on white."""
     return ListedColormap(colormaps["viridis_r"](range(45, 256)), name="dm")
+
+
+def same_minus(axis: Axis) -> None:
+    """Numbers on the axis with the minus of the tables and the screen, wherever the picture is drawn."""
+    axis.set_major_formatter(FuncFormatter(lambda value, _: f"{value:.10g}"))
 
 
 def new_figure(width: float, height: float) -> Figure:
