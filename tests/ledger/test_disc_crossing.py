@@ -101,6 +101,15 @@ def test_fixed_is_the_median_column_of_a_face_on_disc(planck):
     ledgers = audit(sky.bursts(sky.burst()), galaxies=[sky.galaxies(row)], models=MODEL, fixed=True)
     expected = float(disc_column(5.0, 10.3, 1.0, 0.0, False, 0.0)) / 1.05
     assert ledgers.to_pandas()[0].dm_disc_crossing_p50[0] == pytest.approx(expected, rel=1e-6)
+    assert "taken face-on" in ledgers.sightlines["note"][0]
+
+
+def test_a_listed_optical_radius_reaches_further(planck):
+    arcsec = float(np.degrees(20.0 / planck.angular_distance_kpc(0.05)) * 3600)
+    for radius, met in ((arcsec, True), (0.5 * arcsec, False)):
+        row = disc_galaxy(planck, 18.0, radius_arcsec=radius)
+        ledgers = audit(sky.bursts(sky.burst()), galaxies=[sky.galaxies(row)], models=MODEL, draws=100)
+        assert (ledgers.to_pandas()[0].dm_disc_crossing_p50[0] > 0) is met
 
 
 def test_a_dwarf_without_stellar_mass_has_a_small_disc(planck):

@@ -93,3 +93,12 @@ def test_a_host_that_is_found_nowhere_is_said_and_sought_by_place(planck):
         assert not len(ledgers.entries)
         note = str(ledgers.sightlines["note"][0])
         assert (f"host_id '{named}' is in no catalogue given: the host is sought by position" in note) is said
+
+
+def test_a_host_that_is_named_and_listed_decides_alone(planck):
+    # the named host is listed, far from the line; the galaxy beside the burst is another one and stays
+    named = sky.galaxy_at(planck, 12.5, 0.3, 400.0, name="HOST")
+    beside = sky.galaxy_at(planck, 12.0, 0.3 - 0.0008, 8.0, name="NEAR")
+    table = sky.bursts(sky.burst(z=0.3, host_id="HOST"))
+    ledgers = audit(table, galaxies=[sky.galaxies(named, beside)], models=["blended"], draws=32)
+    assert "galaxies:NEAR" in [str(h) for h in ledgers.entries["halo"]]
