@@ -89,7 +89,7 @@ def test_a_mistyped_command_gets_its_neighbour():
     done = run("audti")
     assert done.exit_code == exit_codes.BAD_INPUT
     assert "No command 'audti'. Did you mean 'audit'?" in done.stderr
-    assert "Commands: audit, models, cards, demo." in run("xyzzy").stderr
+    assert "Commands: audit, rehearse, models, cards, demo." in run("xyzzy").stderr
 
 
 def test_a_mistyped_option_gets_its_neighbour():

@@ -10,6 +10,7 @@ from haloledger.cli.lazy import LazyGroup
 
 COMMANDS = {
     "audit": ("haloledger.cli.audit", "The account of every halo in front of each burst."),
+    "rehearse": ("haloledger.cli.rehearse", "The audit on a simulated sky with known truth: do its intervals hold?"),
     "models": ("haloledger.cli.models", "List the halo models, explain one, or plot it."),
     "cards": ("haloledger.cli.cards", "List the catalogue cards or explain one."),
     "demo": ("haloledger.cli.demo", "Audit the invented sightlines that come with the package."),
@@ -21,6 +22,7 @@ and how far to trust the sum.
 
   haloledger demo                 see it work on eight invented sightlines
   haloledger audit --help         the same for your bursts and catalogues
+  haloledger rehearse --help      the same on a simulated sky whose truth is known
   haloledger models               what gas the haloes can be given
   haloledger cards                the public catalogues it can read as they are
 

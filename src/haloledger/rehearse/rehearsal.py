@@ -21,7 +21,7 @@ from haloledger.rehearse.survey import GROUPS, Seen, Survey, look
 
 Progress = Callable[[int, int, str], None]
 DEFAULT_MODEL = "textbook-modified-nfw"
-SECOND_TRUTH = {
+SECOND_TRUTH: dict[str, Any] = {
     "relation": "girelli2020",
     "scatter_factor": 1.5,
     "satellites": "subhaloes",
@@ -100,6 +100,31 @@ def rehearse(
     )
 
 
+def rehearsals(
+    truth: Mapping[str, Any],
+    survey: Mapping[str, Any],
+    ideal: bool = False,
+    second_truth: bool = False,
+    **options: Any,
+) -> tuple[dict[str, Rehearsal], dict[str, Any]]:
+    """The rehearsal asked for and, if wished, that of the second truth, and ideal posteriors; by name."""
+    first, look_ = Truth(**truth), Survey(**survey)
+    if ideal and (look_.photoz or options.get("sky")):
+        raise InputError("--ideal: it is worked out for simulated skies with spectra. Leave --photoz and --sky away.")
+    name = "one universe" if first.one_universe else "truth of the priors"
+    results = {name: rehearse(first, look_, **options)}
+    best: dict[str, Any] = {}
+    if ideal:
+        from haloledger.rehearse.ideal import ideal_posterior
+
+        r, cosmos = results[name], named_cosmology(options.get("cosmology", "Planck18"))
+        draws, seed = options.get("draws", 400), options.get("seed", 1)
+        best[name] = ideal_posterior(r.sky, r.seen, look_, first, r.truth, draws, cosmos, seed)
+    if second_truth:
+        results["second truth"] = rehearse(replace(first, **SECOND_TRUTH), look_, **options)
+    return results, best
+
+
 def check(truth: Truth, survey: Survey, model: str, draws: int) -> None:
     """InputError where a number or a name cannot be used."""
     if truth.lines < 20:
@@ -122,8 +147,12 @@ def true_sums(sky: Sky, seen: Seen) -> tuple[np.ndarray, np.ndarray]:
     """True DM of each line [pc cm-3] in haloes that are listed, and in those that are not; the burst's own apart."""
     front = ~sky.haloes.holds_burst
     n = len(sky.lines)
-    listed, not_listed = (np.flatnonzero(front & w) for w in (seen.listed, ~seen.listed))
-    return tuple(np.bincount(sky.haloes.line[i], sky.dm[i], n) for i in (listed, not_listed))
+
+    def total(which: np.ndarray) -> np.ndarray:
+        rows = np.flatnonzero(front & which)
+        return np.bincount(sky.haloes.line[rows], sky.dm[rows], n)
+
+    return total(seen.listed), total(~seen.listed)
 
 
 def entry_bias(sky: Sky, seen: Seen, audited: Audited) -> dict[str, tuple[int, float, float]]:

@@ -86,12 +86,15 @@ def _stellar_masses(sky: Sky, z_measured, cosmos: Cosmos) -> np.ndarray:
     return g.measured + 2 * np.log10(seen_mpc / true_mpc)
 
 
+def flux_limit(z, survey: Survey, cosmos: Cosmos) -> np.ndarray:
+    """Least log10 M* that is listed at a measured redshift."""
+    far = cosmos.luminosity_distance_mpc(np.maximum(z, 1e-3)) / cosmos.luminosity_distance_mpc(0.1)
+    return np.maximum(survey.depth + 2 * np.log10(far), survey.least)
+
+
 def _rows(sky: Sky, survey: Survey, log_mstar, z_measured, cosmos: Cosmos) -> np.ndarray:
     """Galaxies above the flux limit and the least mass; hosts always."""
-    far = 2 * np.log10(
-        cosmos.luminosity_distance_mpc(np.maximum(z_measured, 1e-3)) / cosmos.luminosity_distance_mpc(0.1)
-    )
-    seen = (log_mstar > survey.depth + far) & (log_mstar > survey.least) & (z_measured > 1e-3)
+    seen = (log_mstar > flux_limit(z_measured, survey, cosmos)) & (z_measured > 1e-3)
     seen[sky.lines.host] = True
     return np.flatnonzero(seen)
 

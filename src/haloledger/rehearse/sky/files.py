@@ -6,6 +6,7 @@ Columns are the names of `truth.Lines`, `truth.Haloes` (with `dm`, the true colu
 
 from __future__ import annotations
 
+from dataclasses import fields
 from pathlib import Path
 
 import numpy as np
@@ -69,7 +70,7 @@ def _columns(file, name: str, path) -> dict[str, np.ndarray]:
     if name not in file:
         raise InputError(f"--sky {path}: no table {name}. A sky has the tables {', '.join(NEEDED)}.")
     data = file[name].data
-    known = {"LINES": Lines, "HALOES": Haloes, "GALAXIES": Galaxies}[name].__dataclass_fields__
+    known = [f.name for f in fields({"LINES": Lines, "HALOES": Haloes, "GALAXIES": Galaxies}[name])]
     there = {c.lower(): c for c in data.names}
     for column in NEEDED[name]:
         if column not in there:

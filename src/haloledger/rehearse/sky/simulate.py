@@ -59,7 +59,8 @@ def simulate(truth: Truth, seed: int, cosmos: Cosmos) -> Sky:
     haloes = join([hosts, field])  # halo i holds the burst of line i
     light = Light(relation[haloes.line], zero[haloes.line], truth.scatter_factor, truth.mass_err)
     of_hosts = stellar_masses(hosts.log_m200c, hosts.z, light.part(hosts.line), cosmos, draw("host masses"))
-    own = centrals(haloes, tuple(np.concatenate(m) for m in zip(of_hosts, masses, strict=True)))
+    true, measured = (np.concatenate(m) for m in zip(of_hosts, masses, strict=True))
+    own = centrals(haloes, (true, measured))
     others = satellites(haloes, light, truth.satellites, truth.satellite_share, Z_BOX, cosmos, draw("satellites"))
     galaxies = join([own, others])
     galaxies, host_row = _satellite_hosts(galaxies, satellite, haloes, cosmos, draw("host orbits"))
