@@ -109,7 +109,7 @@ def test_a_listed_optical_radius_reaches_further(planck):
     for radius, met in ((arcsec, True), (0.5 * arcsec, False)):
         row = disc_galaxy(planck, 18.0, radius_arcsec=radius)
         ledgers = audit(sky.bursts(sky.burst()), galaxies=[sky.galaxies(row)], models=MODEL, draws=100)
-        assert (ledgers.to_pandas()[0].dm_disc_crossing_p50[0] > 0) is met
+        assert bool(ledgers.to_pandas()[0].dm_disc_crossing_p50[0] > 0) is met
 
 
 def test_a_dwarf_without_stellar_mass_has_a_small_disc(planck):

@@ -60,7 +60,9 @@ def disc_notes(haloes: Haloes, crossing: Crossing, discs: Discs) -> list[str]:
         f" ({(discs.dm[i] > 0).mean():.0%} of draws)"
         for i in crossed[np.argsort(-discs.dm[crossed].mean(axis=1), kind="stable")]
     ]
-    return [f"disc crossing: {', '.join(names)}; its interstellar medium is dm_disc_crossing, apart from all haloes"]
+    how = "" if discs.dm.shape[1] > 1 else ", taken face-on"
+    where = "its interstellar medium is dm_disc_crossing, apart from all haloes"
+    return [f"disc crossing: {', '.join(names)}{how}; {where}"]
 
 
 def _is_galaxy(haloes: Haloes, index: np.ndarray) -> np.ndarray:

@@ -27,14 +27,13 @@ WIDEST_Z_ERR = 0.012
 def is_host(bursts: Bursts, i: int, haloes: Haloes, index: np.ndarray, cosmos: Cosmos) -> np.ndarray:
     """Rows of `index` that are the host galaxy of burst i (n_index,) bool: by host_id, or by position and redshift.
 
-    By position it is the nearest galaxy whose redshift agrees, within LEAST_KPC or three sigma of the localisation.
+    A host_id decides alone. By position it is the nearest galaxy whose redshift agrees, within LEAST_KPC or three sigma
+    of the localisation.
     """
     rows = haloes.source_rows[index]
     wanted = str(bursts.host[i])
     if wanted:
-        named = [wanted in _names(r) for r in rows]
-        if any(named):
-            return np.array(named)
+        return np.array([wanted in _names(r) for r in rows], dtype=bool)
     if np.isnan(bursts.z[i]):
         return np.zeros(len(index), bool)
     seen_arcsec = np.degrees(LEAST_KPC / cosmos.angular_distance_kpc(max(bursts.z[i], 1e-4))) * 3600
@@ -47,7 +46,7 @@ def is_host(bursts: Bursts, i: int, haloes: Haloes, index: np.ndarray, cosmos: C
 
 
 def with_unknown_hosts(bursts: Bursts, catalogues: Sequence) -> Bursts:
-    """The bursts, with a note on those whose host_id is a row of no catalogue: that host is sought by place."""
+    """The bursts without those host_id that are rows of no catalogue; a note says so: they are sought by place."""
     wanted = {str(h) for h in bursts.host} - {""}
     if not wanted:
         return bursts
@@ -55,11 +54,12 @@ def with_unknown_hosts(bursts: Bursts, catalogues: Sequence) -> Bursts:
     unknown = wanted - full - {name.split(":", 1)[-1] for name in full}
     if not unknown:
         return bursts
-    note = bursts.note.astype(object)
+    note, host = bursts.note.astype(object), bursts.host.astype(object)
     for i in np.flatnonzero(np.isin(np.asarray(bursts.host, dtype=str), sorted(unknown))):
         said = f"host_id '{bursts.host[i]}' is in no catalogue given: the host is sought by position and redshift"
         note[i] = f"{note[i]}; {said}" if note[i] else said
-    return replace(bursts, note=note)
+        host[i] = ""
+    return replace(bursts, note=note, host=host)
 
 
 def holds_burst(

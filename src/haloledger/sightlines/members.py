@@ -44,6 +44,8 @@ def _on_a_line(bursts: Bursts, table: Galaxies, members: set[str], cosmos: Cosmo
     part = take(table, held)
     reach = float(reach_kpc(np.array([np.nan]))[0])
     radius = np.degrees(reach / (NEARER * cosmos.angular_distance_kpc(point_redshift(part, cosmos))))
+    if getattr(part, "radius_arcsec", None) is not None:
+        radius = np.fmax(radius, part.radius_arcsec / 3600 / NEARER)
     margin = SIGMAS * np.nan_to_num(bursts.loc_major_arcsec) / 3600
     _, near = near_pairs(bursts.ra_deg, bursts.dec_deg, margin, part.ra_deg, part.dec_deg, np.minimum(radius, 90.0))
     return held[np.unique(near)]
