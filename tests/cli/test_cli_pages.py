@@ -26,6 +26,19 @@ def test_models_lists_every_shipped_model():
     assert model_names()
 
 
+@pytest.mark.parametrize("columns", ["60", "72", "120"])
+def test_model_names_stay_apart_on_any_screen(columns):
+    from haloledger.gas.models import model_names
+
+    done = CliRunner().invoke(cli, ["models"], prog_name="haloledger", env={"COLUMNS": columns})
+    lines = done.stdout.split("kept: gas inside")[0].splitlines()
+    assert max(map(len, lines)) <= int(columns)
+    assert "…" not in "".join(lines)
+    table = "".join(lines).replace(" ", "")
+    assert all(name in table or name.rpartition("-")[0] in table for name in model_names())
+    assert "A wider screen shows more columns." in done.stdout
+
+
 def test_kept_fractions_on_screen_are_those_of_the_model(planck):
     from haloledger.cosmos.concentration import concentration
     from haloledger.gas.models import load_model

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import click
 
+from haloledger.cli import exit_codes
 from haloledger.cli.lazy import Command, option
 
 MODELS = ("blended", "textbook-modified-nfw", "strong-feedback")
@@ -14,10 +15,16 @@ haloledger demo --out somewhere_else
 """
 
 
-@click.command("demo", cls=Command, example=EXAMPLE, context_settings={"help_option_names": ["-h", "--help"]})
+@click.command(
+    "demo",
+    cls=Command,
+    example=EXAMPLE,
+    statuses=exit_codes.HELP,
+    context_settings={"help_option_names": ["-h", "--help"]},
+)
 @option("--out", group="Output", default="demo_out", show_default=True, metavar="DIR", help="Folder for the files.")
 @option("-q", "--quiet", group="Talk", is_flag=True, help="Nothing on screen but errors.")
-@option("-v", "--verbose", group="Talk", count=True, help="Say more; -vv says all.")
+@option("-v", "--verbose", group="Talk", count=True, help="Say what is done; -vv all notes too.")
 def command(out: str, quiet: bool, verbose: int) -> int:
     """Audit eight invented sightlines, write tables and pictures, and show the ledgers.
 

@@ -11,3 +11,5 @@ HELP = (
     "Exit status: 0 done; 1 done, but rows or sightlines were refused (they are listed); "
     "2 bad input, nothing written; 3 a fault of this program; 130 stopped by Ctrl-C."
 )
+
+PAGES = "Exit status: 0 done; 2 bad input, nothing written; 3 a fault of this program; 130 stopped by Ctrl-C."

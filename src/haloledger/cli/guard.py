@@ -6,7 +6,8 @@ import os
 import sys
 import tempfile
 import traceback
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
+from contextlib import contextmanager
 from pathlib import Path
 from typing import Any, NoReturn
 
@@ -14,6 +15,19 @@ import click
 
 from haloledger.cli import exit_codes
 from haloledger.errors import HaloledgerError, InputError
+
+
+class ReaderGone(Exception):
+    """Nobody reads what is written to stdout. Not an OSError: those click answers itself, with status 1."""
+
+
+@contextmanager
+def noticing_the_reader() -> Iterator[None]:
+    """Turn a broken pipe into `ReaderGone`."""
+    try:
+        yield
+    except BrokenPipeError as error:
+        raise ReaderGone from error
 
 
 def leave(run: Callable[[], Any]) -> NoReturn:
@@ -29,7 +43,7 @@ def leave(run: Callable[[], Any]) -> NoReturn:
     except (click.Abort, KeyboardInterrupt):
         _say("Stopped. Files are written in one go at the end, so none is half written.")
         status = exit_codes.STOPPED
-    except BrokenPipeError:
+    except (BrokenPipeError, ReaderGone):
         _no_more_output()
         status = exit_codes.PIPE_CLOSED
     except InputError as fault:

@@ -3,12 +3,17 @@
 from __future__ import annotations
 
 import difflib
+from collections.abc import Callable, Sequence
 from importlib import import_module
 from typing import Any
 
 import click
 
 from haloledger.cli import exit_codes
+from haloledger.cli.guard import leave, noticing_the_reader
+
+LAST = "Talk"  # the heading that stands last, with --help under it
+Section = Sequence[tuple[str, str] | str]
 
 
 class LazyGroup(click.Group):
@@ -38,10 +43,16 @@ class LazyGroup(click.Group):
         with formatter.section("Commands"):
             formatter.write_dl([(name, text) for name, (_, text) in self.lazy.items()])
 
+    def make_context(self, *args: Any, **kwargs: Any) -> click.Context:
+        with noticing_the_reader():
+            return super().make_context(*args, **kwargs)
+
+    def invoke(self, ctx: click.Context) -> Any:
+        with noticing_the_reader():
+            return super().invoke(ctx)
+
     def main(self, args: Any = None, prog_name: str | None = None, **extra: Any) -> Any:  # type: ignore[override]
         """Run and leave with one of the exit statuses; see `haloledger.cli.guard`."""
-        from haloledger.cli.guard import leave
-
         extra.pop("standalone_mode", None)
         leave(lambda: super(LazyGroup, self).main(args, prog_name, standalone_mode=False, **extra))
 
@@ -49,38 +60,57 @@ class LazyGroup(click.Group):
 class GroupedOption(click.Option):
     """An option that stands under a heading of its own in the help: `group="Input"`."""
 
-    def __init__(self, *args: Any, group: str = "Other", **kwargs: Any) -> None:
+    def __init__(self, *args: Any, group: str = LAST, **kwargs: Any) -> None:
         super().__init__(*args, **kwargs)
         self.group = group
 
 
 class Command(click.Command):
-    """A command with options under headings, an example, and the exit statuses in its help."""
+    """A command with options under headings, an example, and the exit statuses in its help.
 
-    def __init__(self, *args: Any, example: str, **kwargs: Any) -> None:
+    more      sections for the end of the help, heading -> (name, text) pairs or sentences; called only for the help
+    statuses  what the help says of exit statuses
+    """
+
+    def __init__(
+        self,
+        *args: Any,
+        example: str,
+        more: Callable[[], dict[str, Section]] = dict,
+        statuses: str = exit_codes.PAGES,
+        **kwargs: Any,
+    ) -> None:
         kwargs.setdefault("no_args_is_help", False)
         super().__init__(*args, **kwargs)
-        self.example = example
+        self.example, self.more, self.statuses = example, more, statuses
 
     def format_options(self, ctx: click.Context, formatter: click.HelpFormatter) -> None:
         sections: dict[str, list[tuple[str, str]]] = {}
         for parameter in self.get_params(ctx):
-            record = parameter.get_help_record(ctx)
+            record = None if isinstance(parameter, click.Argument) else parameter.get_help_record(ctx)
             if record:
-                sections.setdefault(getattr(parameter, "group", "Other"), []).append(record)
-        for name, records in sorted(sections.items(), key=lambda item: item[0] == "Other"):  # --help last
+                sections.setdefault(getattr(parameter, "group", LAST), []).append(record)
+        for name, records in sorted(sections.items(), key=lambda item: item[0] == LAST):
             with formatter.section(name):
                 formatter.write_dl(records)
 
     def format_epilog(self, ctx: click.Context, formatter: click.HelpFormatter) -> None:
+        for heading, content in self.more().items():
+            with formatter.section(heading):
+                for part in content:
+                    if isinstance(part, str):
+                        formatter.write_text(part)
+                pairs = [part for part in content if not isinstance(part, str)]
+                if pairs:
+                    formatter.write_dl(pairs)
         formatter.write_paragraph()
         with formatter.section("Example"):
             for line in self.example.strip("\n").splitlines():
                 formatter.write(f"{'':{formatter.current_indent}}{line}\n")
         formatter.write_paragraph()
-        formatter.write_text(exit_codes.HELP)
+        formatter.write_text(self.statuses)
 
 
-def option(*names: str, group: str = "Other", **kwargs: Any) -> Any:
+def option(*names: str, group: str = LAST, **kwargs: Any) -> Any:
     """`click.option` with a heading."""
     return click.option(*names, cls=GroupedOption, group=group, **kwargs)

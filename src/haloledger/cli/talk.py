@@ -8,10 +8,13 @@ import sys
 import warnings
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
+from time import perf_counter
+from typing import Any
 
 import click
 
 Progress = Callable[[int, int, str], None]
+LOG = logging.getLogger("haloledger")
 
 
 def level(quiet: bool, verbose: int) -> int:
@@ -20,8 +23,12 @@ def level(quiet: bool, verbose: int) -> int:
 
 
 def listen(quiet: bool, verbose: int) -> None:
-    """Send the log of this package to stderr; warnings of libraries are shown with -v only."""
-    logging.basicConfig(level=level(quiet, verbose), format="%(name)s: %(message)s", stream=sys.stderr, force=True)
+    """Send the log of this package to stderr; of other libraries only warnings, and those with -v only."""
+    chosen = level(quiet, verbose)
+    logging.basicConfig(
+        level=max(chosen, logging.WARNING), format="%(name)s: %(message)s", stream=sys.stderr, force=True
+    )
+    LOG.setLevel(chosen)
     logging.captureWarnings(True)
     if not verbose:
         warnings.simplefilter("ignore")
@@ -29,14 +36,39 @@ def listen(quiet: bool, verbose: int) -> None:
 
 
 def say(message: str, quiet: bool = False) -> None:
-    """One line of talk."""
-    if not quiet:
+    """One line of talk; "" is none."""
+    if message and not quiet:
         click.echo(message, err=True)
 
 
+class Stages:
+    """A progress callback that logs each stage with its seconds once it is over."""
+
+    def __init__(self) -> None:
+        self.what, self.total, self.start = "", 0, 0.0
+
+    def __call__(self, done: int, total: int, what: str) -> None:
+        if what != self.what:
+            self.close()
+            self.what, self.start = what, perf_counter()
+        self.total = total
+
+    def close(self) -> None:
+        """Log the stage that is going on."""
+        if self.what:
+            many = f" ({self.total})" if self.total > 1 else ""
+            LOG.info("%s%s: %.1f s", self.what, many, perf_counter() - self.start)
+        self.what = ""
+
+
 @contextmanager
-def progress_bar(quiet: bool) -> Iterator[Progress | None]:
-    """A callback (done, total, what) that moves a bar on stderr; None where nobody would see it."""
+def progress_bar(quiet: bool, verbose: int = 0) -> Iterator[Progress | None]:
+    """A callback (done, total, what): a bar on a terminal, lines with -v; None where nobody would see it."""
+    if verbose and not quiet:
+        stages = Stages()
+        yield stages
+        stages.close()
+        return
     if quiet or not sys.stderr.isatty() or os.environ.get("TERM") == "dumb":
         yield None
         return
@@ -48,3 +80,26 @@ def progress_bar(quiet: bool) -> Iterator[Progress | None]:
     with Progress(*columns, console=to, transient=True) as bar:
         task = bar.add_task("starting", total=None)
         yield lambda done, total, what: bar.update(task, completed=done, total=total, description=what)
+
+
+def tell_counts(ledgers: Any) -> None:
+    """With -v the size of what was done, with -vv every note of every row."""
+    if not LOG.isEnabledFor(logging.INFO):
+        return
+    from haloledger.report.names import plain
+    from haloledger.report.text import counted
+    from haloledger.report.views import views
+
+    every = views(ledgers)
+    for model in ledgers.models:
+        entries = [e for v in every if v.model == model.name for e in v.entries]
+        haloes = counted(len({e.halo for e in entries}), "halo", "haloes")
+        pairs = counted(len(entries), "pair")
+        LOG.info("%s: %s of a burst and a halo it meets in some draw, %s in all", model.name, pairs, haloes)
+    LOG.info("%s refused", counted(len(ledgers.refused), "row"))
+    for view in every:
+        if view.note:
+            LOG.debug("%s, %s: %s", plain(view.burst), view.model, plain(view.note))
+        for e in view.entries:
+            if e.note:
+                LOG.debug("%s, %s, %s: %s", plain(view.burst), view.model, plain(e.halo), plain(e.note))
