@@ -138,6 +138,19 @@ def test_every_halo_in_view_has_its_number():
     assert out_of_view(haloes, 8.0) == [4]
 
 
+def test_two_views_number_each_halo_once():
+    from haloledger.report.figures.sky import SkyHalo, second_view
+
+    haloes = [SkyHalo(0.0, 30.0, 50.0, 5.0, 1), SkyHalo(0.5, 0.4, 1.0, 5.0, 2), SkyHalo(-3.0, 0.0, 4.5, 5.0, 3)]
+    axes = new_figure(6, 6).add_axes((0, 0, 1, 1))
+    norm = colour_norm(haloes)
+    draw_sky(axes, haloes, (np.nan,) * 3, 80.0, norm, zoom=5.0)
+    second_view(axes, haloes, (np.nan,) * 3, 80.0, 5.0, norm)
+    (inset,) = axes.child_axes
+    assert {t.get_text() for t in axes.texts} == {"1", "3"}
+    assert {t.get_text() for t in inset.texts if t.get_text().isdigit()} == {"2"}
+
+
 def test_minus_signs_are_those_of_the_tables(ledgers):
     assert "\N{MINUS SIGN}" not in words(sightline_figure(ledgers, "FRB20990101A"))
 

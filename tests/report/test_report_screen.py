@@ -225,10 +225,12 @@ def test_few_draws_and_held_nuisances_are_said_first(ledgers):
     assert "intervals are rough" not in printed(ledgers)
 
 
-def test_every_nuisance_has_its_unit():
+def test_words_for_nuisances_are_those_of_the_package():
+    from haloledger.haloes.nuisances import FIXED_RELATION
     from haloledger.ledger.nuisances import NUISANCES
 
     assert set(text.HELD_UNIT) == set(NUISANCES)
+    assert text.FIXED_RELATION == FIXED_RELATION
 
 
 def test_a_mean_outside_its_interval_is_explained_once(ledgers):

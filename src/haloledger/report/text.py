@@ -16,6 +16,7 @@ CAUTION = (
 
 MEAN_OUTSIDE = "a mean outside its 16 to 84 % range: most draws miss the halo, a few cross it"
 FEW_DRAWS = 100
+FIXED_RELATION = "moster2013"  # what a fixed run inverts where no relation is held
 HELD_UNIT = {
     "relation": "stellar-to-halo relation",
     "zero_point": "dex",
@@ -118,8 +119,6 @@ def conditions(settings: Settings) -> list[str]:
     """What was held or switched off, and whether there are too few draws: to be read before the numbers."""
     lines = []
     if settings.fixed:
-        from haloledger.haloes.nuisances import FIXED_RELATION
-
         relation = settings.held.get("relation", FIXED_RELATION)
         # Tinker et al. 2008 prior, 0.15 to 0.2 dex of scatter: the inversion alone is 0.42 to 0.67 dex too heavy
         much = " (by 0.5 dex at log M* = 11.3)" if relation == FIXED_RELATION else ""

@@ -50,6 +50,11 @@ class Spread:
         return not (self.known and (self.mean != 0 or self.p50 != 0))
 
     @property
+    def spreads(self) -> bool:
+        """Whether there is an interval: not where everything is fixed, nor where only a mean is known."""
+        return bool(np.isfinite(self.p16) and not self.p16 == self.p84 == self.mean)
+
+    @property
     def mean_outside(self) -> bool:
         """Whether the printed mean lies outside the printed interval."""
         return bool(self.mean > self.p84 + VISIBLE or self.mean < self.p16 - VISIBLE)

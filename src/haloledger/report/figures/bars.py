@@ -81,7 +81,7 @@ def _row(axes: Axes, i: int, row: Bar, any_dm: bool) -> tuple[float, float]:
     if any_dm:
         whisker(axes, i, s)
     _label(axes, i, row)
-    value = text.dm(s.mean) + (f"  ({text.dm_range(s)})" if s.p84 > s.p16 else "")
+    value = text.dm(s.mean) + (f"  ({text.dm_range(s)})" if s.spreads else "")
     end = max(v for v in (s.mean, s.p84, 0.0) if np.isfinite(v))
     number: dict[str, Any] = {"xy": (end, i), "xytext": (5, 0), "textcoords": "offset points"}
     shown = axes.annotate(value, **number, va="center", fontsize=8.8, fontweight=_weight(row))
@@ -101,7 +101,7 @@ def _label(axes: Axes, i: int, row: Bar) -> None:
 
 
 def _share_of_width(axes: Axes, words: Any) -> float:
-    renderer = axes.figure.canvas.get_renderer()  # type: ignore[union-attr]
+    renderer = axes.figure.canvas.get_renderer()  # type: ignore[union-attr, attr-defined]
     return float(words.get_window_extent(renderer).width / axes.get_window_extent(renderer).width)
 
 
@@ -111,7 +111,7 @@ def _weight(row: Bar) -> str:
 
 def whisker(axes: Axes, y: float, s: Spread) -> None:
     """The 16 to 84 % interval as a line and the median as a tick on it, readable on any bar."""
-    if not s.p84 > s.p16:
+    if not s.spreads:
         return
     for width, colour in ((3.4, "white"), (1.5, INK)):
         axes.plot([s.p16, s.p84], [y, y], color=colour, linewidth=width, zorder=3, solid_capstyle="butt")

@@ -37,7 +37,7 @@ def draw_budget(axes: Axes, view: SightlineView) -> None:
         s = view.terms[term]
         mean = s.mean if np.isfinite(s.mean) else 0.0
         axes.barh(row, mean, left=reached, height=0.62, color=_COLOURS[term], zorder=2)
-        if np.isfinite(s.p16) and s.p84 > s.p16:
+        if s.spreads:
             interval(axes, row, reached + s.p16, reached + s.p84)
             ends += [reached + s.p16, reached + s.p84]
         _row_text(axes, row, name, with_range(s, s.mean) if s.known else text.NONE)
@@ -67,7 +67,7 @@ def interval(axes: Axes, row: float, low: float, high: float) -> None:
 
 def with_range(s: Spread, value: float) -> str:
     """A value and the interval, if there is one."""
-    return f"{text.dm(value)}  ({text.dm_range(s)})" if s.p84 > s.p16 else text.dm(value)
+    return f"{text.dm(value)}  ({text.dm_range(s)})" if s.spreads else text.dm(value)
 
 
 def _left_over(axes: Axes, view: SightlineView, row: int) -> list[float]:
@@ -79,10 +79,9 @@ def _left_over(axes: Axes, view: SightlineView, row: int) -> list[float]:
         return []
     hatch = "////" if s.p50 < 0 else ""
     axes.barh(row, s.p50, height=0.62, facecolor="white", edgecolor=LEFT_OVER, hatch=hatch, zorder=2, gid="left over")
-    spread = s.p84 > s.p16
-    if spread:
+    if s.spreads:
         interval(axes, row, s.p16, s.p84)
-    _row_text(axes, row, "left over, median" if spread else "left over", with_range(s, s.p50), strong=True)
+    _row_text(axes, row, "left over, median" if s.spreads else "left over", with_range(s, s.p50), strong=True)
     return [s.p16, s.p50, s.p84]
 
 

@@ -113,7 +113,9 @@ def draw_sky(
         line = 1.8 if h.number else 0.7
         axes.add_patch(Circle((h.x, h.y), h.radius, facecolor=fill, edgecolor=colour, linewidth=line, gid="boundary"))
     _localisation(axes, ellipse, radius, small)
-    _numbers(axes, [h for h in haloes if not (zoom and h.sep + h.radius < zoom)], radius, colours, norm, small)
+    # each halo has its number once: in the second view if that shows it whole
+    numbered = [h for h in haloes if (h.sep + h.radius < (radius if small else zoom or 0)) == small]
+    _numbers(axes, numbered, radius, colours, norm, small)
     axes.set(xlim=(radius, -radius), ylim=(-radius, radius), aspect="equal")
 
 
