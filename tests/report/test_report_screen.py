@@ -97,6 +97,16 @@ def test_many_bursts_get_a_line_each():
     assert "every halo and every note of every burst is in the tables there" in page
 
 
+def test_names_of_largest_haloes_are_cut_only_as_far_as_needed():
+    names = [f"FRB209901{i:02d}A" for i in range(13)]
+    many = make(names=names, halo="a_survey_of_many_words:")
+    assert "a_survey_of_many_words:cluster 7" in printed(many, 140)
+    narrow = printed(many, 100)
+    assert max(map(len, narrow.splitlines())) <= 100
+    assert "a_survey_of_many_words:cluster 7" not in narrow
+    assert "every halo and every note" in printed(many, folder=None)
+
+
 def test_a_clean_sightline_says_so_without_a_table(ledgers):
     for name in ("dm_mean", "dm_p84"):
         ledgers.entries[name][:] = 0 * ledgers.entries[name].unit

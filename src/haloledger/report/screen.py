@@ -36,7 +36,7 @@ from haloledger.report.views import (
 MANY = 12  # more bursts than this get a line each
 TOP = 8  # entries shown a burst
 SHORTEST_NAME = 22  # a column of numbers goes before names get narrower than this
-SHORTEST_HALO = 20  # in the table of many bursts
+SHORTEST_HALO = 24  # in the table of many bursts
 LEAST_NAME = 12  # names are broken over lines rather than pressed narrower
 DM_MEAN, RANGE, DISC, LEFT_OVER = "DM mean", "16 to 84 %", "disc mean", "left over, median"
 NARROWEST, WIDEST = 60, 140
@@ -296,7 +296,12 @@ def _many(bursts: dict[str, list[SightlineView]], made: Settings, width: int) ->
 
 
 def _fitted(columns: list[Cells], heading: str, name: int, width: int) -> list[Cells]:
-    """The columns with the words under `heading` cut as far as needed to fit the width, and no further."""
+    """The columns with the words under `heading` cut as far as needed to fit the width, and no further.
+
+    The most dispensable column goes before.
+    """
+    if sum(c.width for c in columns) + min(name, SHORTEST_NAME) + 2 > width:
+        columns = [c for c in columns if c.spare < max(c.spare for c in columns)]
     over = sum(c.width for c in columns) + min(name, SHORTEST_NAME) + 2 - width
     at = next(i for i, c in enumerate(columns) if c.heading == heading)
     room = max(columns[at].width - 2 - max(over, 0), SHORTEST_HALO)
@@ -327,6 +332,8 @@ def _last_words(
     if folder:
         what = "every halo and every note of every burst is in the tables there" if many else "all entries are there"
         parts.append(sentence(f"Files are in {folder}: {what}."))
+    elif many:
+        parts.append(sentence("--out DIR writes every halo and every note of every burst."))
     return [*parts, sentence(text.CAUTION, "italic dim")]
 
 
