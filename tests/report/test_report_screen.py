@@ -282,6 +282,12 @@ def test_dm_as_text(value, shown):
     assert text.dm(value) == shown
 
 
+def test_a_held_value_has_no_interval():
+    assert not Spread(24.700000000000003, 24.7, 24.7, 24.7).spreads
+    assert Spread(0.3, 0.0, 0.0, 0.0).spreads  # most draws miss: the interval says so
+    assert not Spread(mean=3.0).spreads
+
+
 def test_other_numbers_as_text():
     assert text.percent(0.004) == "<1%"
     assert text.percent(0.0) == "0%"

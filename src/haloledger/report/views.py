@@ -52,7 +52,8 @@ class Spread:
     @property
     def spreads(self) -> bool:
         """Whether there is an interval: not where everything is fixed, nor where only a mean is known."""
-        return bool(np.isfinite(self.p16) and not self.p16 == self.p84 == self.mean)
+        one_value = np.allclose([self.p16, self.p84], self.mean, rtol=1e-9, atol=1e-9)  # a mean rounds in its last bits
+        return bool(np.isfinite(self.p16) and not one_value)
 
     @property
     def mean_outside(self) -> bool:
