@@ -139,6 +139,9 @@ def _changed(table: Any, i: int, sets: dict[str, Any], luminosity_mpc: Callable)
         if getattr(table, "z_flow", None) is not None:  # the frame's motion stays what it is in that direction
             new["z_flow"] = np.array(table.z_flow)
             new["z_flow"][i] = (1 + sets["z"]) * _frame_factor(table, i) - 1
+        if getattr(table, "z_scores", None) is not None:  # a listed p(z) is replaced too
+            new["z_scores"] = np.array(table.z_scores)
+            new["z_scores"][i] = np.nan
         new["z"][i], new["z_err"][i] = sets["z"], sets.get("z_err", 0.0)
         new["photometric"][i] = sets.get("z_err", 0.0) > SHARP_Z_ERR
         new["distance_mpc"][i] = new["distance_err_mpc"][i] = np.nan

@@ -49,7 +49,7 @@ def gas_by_hand(haloes: Haloes, rows: dict[str, list[Override]], models: dict[st
 
 _TOUCHED = (
     *("note", "mass_kind", "value", "value_err", "posterior", "one_minus_b", "one_minus_b_err", "log_mstar"),
-    *("z", "z_err", "z_flow", "photometric", "distance_mpc", "distance_err_mpc"),
+    *("z", "z_err", "z_flow", "z_scores", "photometric", "distance_mpc", "distance_err_mpc"),
 )
 
 
@@ -76,6 +76,8 @@ def _set(columns: dict[str, np.ndarray], i: int, each: Override, described: bool
         if "z_flow" in columns and np.isfinite(columns["z_flow"][i]):
             columns["z_flow"][i] = (1 + sets["z"]) * (1 + columns["z_flow"][i]) / (1 + columns["z"][i]) - 1
         columns["z"][i], columns["z_err"][i] = sets["z"], sets.get("z_err", 0.0)
+        if "z_scores" in columns:
+            columns["z_scores"][i] = np.nan
         columns["photometric"][i] = sets.get("z_err", 0.0) > SHARP_Z_ERR
         columns["distance_mpc"][i] = columns["distance_err_mpc"][i] = np.nan
     if "distance_mpc" in sets:
