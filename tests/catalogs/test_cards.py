@@ -389,3 +389,13 @@ def test_a_native_table_without_its_card_is_told_which_fits(tmp_path):
         read_galaxies(table)
     with pytest.raises(InputError, match=r"The card '50mgc' fits these columns \(it lists galaxies\)"):
         read_groups(table)
+
+
+def test_share_of_outliers_is_a_share(tmp_path):
+    from haloledger.catalogs.cards.loader import FOLDER
+
+    text = (FOLDER / "redmapper-sdss.toml").read_text(encoding="utf-8")
+    path = tmp_path / "mine.toml"
+    path.write_text(text.replace('kind = "phot"', 'kind = "phot"\noutliers = 5.0'), encoding="utf-8")
+    with pytest.raises(InputError, match=r"redshift.outliers = 5: write a share, such as 0.05"):
+        load_card(path)

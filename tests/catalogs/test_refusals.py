@@ -37,6 +37,7 @@ ROWS = [  # kind, column, cells, found, advice
     ("galaxies", "distance_mpc", [10.0, 0.0], "0", "positive distance"),
     ("groups", "log_mass", [14.0, 1e14], "1e+14", "not a logarithm"),
     ("groups", "log_mass", [14.0, 4.28], "4.28", "no 1e14 units"),
+    ("groups", "log_mass", [14.0, 16.4], "16.4", "More than any cluster"),
     ("groups", "log_mass", [14.0, np.nan], "nothing", "log10 of the mass"),
     ("groups", "mass_def", ["200c", ""], "nothing", "mass without definition: write one of 200c, 500c"),
     ("groups", "mass_def", ["200c", "200b"], "200b", "Did you mean '200"),

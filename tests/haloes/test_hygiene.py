@@ -14,7 +14,7 @@ KMS = 1 / 299792.458
 
 
 def test_copies_within_a_list_count_once(make_galaxies, planck):
-    # 1 arcsec apart; then 3 kpc (1.6 arcsec at z 0.1) is covered too: 8 arcsec at z 0.02 are 3.3 kpc; then other redshifts
+    # 1 arcsec apart; 8 arcsec at z 0.02, which are 3.3 kpc; and the same two with redshifts that differ
     galaxies = make_galaxies(
         "g",
         8,

@@ -73,9 +73,9 @@ def whole_sky(shared_data, planck):
             ("redmapper-sdss", "clusters/redmapper_sdss.csv.gz"),
         )
     ]
-    start = time.perf_counter()
+    start = time.process_time()
     haloes = halo_list(galaxies, groups, planck)
-    return haloes, time.perf_counter() - start
+    return haloes, time.process_time() - start
 
 
 CLUSTERS = [("Virgo", 187.71, 12.36, 0.0042), ("Coma", 194.95, 27.98, 0.0231), ("Perseus", 49.95, 41.51, 0.0179)]
@@ -108,4 +108,81 @@ def test_whole_sky_is_quick_and_distinct(whole_sky):
     assert len(set(haloes.id)) == len(haloes) > 80_000
     named = [row for text in haloes.source_rows for row in text.split(";")]
     assert len(named) == len(set(named))
-    assert seconds < 10  # 1.1 s alone on one core
+    assert seconds < 10  # 3 s alone on one core
+
+
+@pytest.fixture(scope="module")
+def nearby_sky(shared_data, planck):
+    """2M++, 50MGC, Kourkchi & Tully, MCXC and 2M++ groups together."""
+    from haloledger.catalogs import read_galaxies, read_groups
+
+    galaxies = [
+        read_galaxies(f"{card}:{shared_data / 'galaxies' / file}")
+        for card, file in (("2mpp", "2mpp.csv.gz"), ("50mgc", "50mgc.fits"))
+    ]
+    groups = [
+        read_groups(f"{card}:{shared_data / file}")
+        for card, file in (
+            ("kourkchi-tully", "groups/kourkchi_tully_2017.txt"),
+            ("mcxc", "clusters/mcxc.fits"),
+            ("2mpp-groups", "groups/2mpp_groups.csv"),
+        )
+    ]
+    return halo_list(galaxies, groups, planck), galaxies, groups
+
+
+# position, redshift, radius of the search [degrees], least mass there, catalogues that list it
+NEARBY = [
+    ("Virgo", 187.71, 12.36, 0.0042, 3.0, 13.5, {"kourkchi-tully", "mcxc", "2mpp-groups"}),
+    ("Fornax", 54.62, -35.45, 0.0047, 2.0, 13.0, {"kourkchi-tully", "mcxc", "2mpp-groups"}),
+    ("Coma", 194.95, 27.98, 0.0231, 1.0, 14.0, {"mcxc", "2mpp-groups"}),
+    ("Perseus", 49.95, 41.51, 0.0179, 1.0, 14.0, {"kourkchi-tully", "mcxc", "2mpp-groups"}),
+    ("Centaurus A", 201.37, -43.02, 0.0018, 3.5, 12.0, {"kourkchi-tully"}),
+    ("M81", 148.89, 69.07, 0.0002, 2.0, 12.0, {"kourkchi-tully", "2mpp-groups"}),
+]
+
+
+@pytest.mark.parametrize(("name", "ra", "dec", "z", "radius", "least", "lists"), NEARBY)
+def test_well_known_halo_is_one_with_every_row(name, ra, dec, z, radius, least, lists, nearby_sky, planck):
+    haloes, *_ = nearby_sky
+    near = np.degrees(separation_rad(haloes.ra_deg, haloes.dec_deg, ra, dec)) < radius
+    near &= np.abs(haloes.z - z) < 0.004
+    index = np.flatnonzero(near & (haloes.kind == "group"))
+    heavy = index[point_mass(rows(haloes, index), planck) > least]
+    assert heavy.size == 1, haloes.source_rows[heavy]
+    named = haloes.source_rows[heavy[0]].split(";")
+    assert {row.split(":")[0] for row in named} == lists
+    # NGC 5128 stands 180 kpc off its group's centre: a member in 97 per cent of draws, not for sure
+    assert haloes.members[heavy[0]] or name == "Centaurus A"
+    # galaxies that are left around it have their own halo as rarely as their membership says
+    inside = np.flatnonzero(near & (haloes.kind == "galaxy") & (haloes.p_member > 0.5))
+    drawn = draw_haloes(haloes, inside, Universe(3, 400), "dutton2014", planck)
+    own = (drawn.own & ~drawn.hosted).mean(axis=1)
+    assert np.all(own <= 1 - haloes.p_member[inside] + 5 * np.sqrt(0.25 / 400))
+    assert own.mean() == pytest.approx(np.mean(1 - haloes.p_member[inside]), abs=0.02) if inside.size else True
+
+
+def test_mass_within_3500_kms_against_the_group_catalogue(nearby_sky, planck):
+    haloes, _, groups = nearby_sky
+    near = haloes.z < 3500 / 299792.458
+    ours = (10 ** point_mass(haloes, planck) * (1 - haloes.p_member + haloes.p_hosted))[near].sum()
+    published = (10 ** groups[0].log_mass).sum()
+    # 0.90 to 0.95 of Kourkchi & Tully's sum: X-ray masses and dispersions pull some of their groups down
+    assert 0.8 < ours / published < 1.1
+
+
+def test_stellar_masses_of_ks_against_the_50_mpc_catalogue(nearby_sky, planck):
+    from haloledger.haloes.distances import point_luminosity_distance_mpc
+    from haloledger.haloes.doubles import _same_galaxies
+    from haloledger.haloes.listing import galaxy_haloes
+
+    _, galaxies, _ = nearby_sky
+    ks, listed = (galaxy_haloes(g, k, planck) for k, g in enumerate(galaxies))
+    i, j = _same_galaxies(ks, listed, planck)
+    assert i.size > 3500
+    mpc = point_luminosity_distance_mpc(listed, planck)[j] / point_luminosity_distance_mpc(ks, planck)[i]
+    step = ks.value[i] - listed.value[j]
+    for offset, scatter, x in ((0.17, 0.21, step), (0.06, 0.14, step + 2 * np.log10(mpc))):
+        # most of the difference is the distance: flow against measured ones; at one distance 0.06 dex are left
+        assert np.median(x) == pytest.approx(offset, abs=0.03)
+        assert 1.4826 * np.median(np.abs(x - np.median(x))) == pytest.approx(scatter, abs=0.03)

@@ -4,13 +4,15 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
+from scipy.special import ndtr
 
+from haloledger.catalogs.redshift_density import SCORES
 from haloledger.cosmos.mass_function import mass_function
 from haloledger.engine.universe import Universe
 from haloledger.haloes.build import halo_list
 from haloledger.haloes.distances import z_floor, z_of_luminosity_distance
 from haloledger.haloes.draws import draw_haloes
-from haloledger.haloes.posterior import mean_of_200c
+from haloledger.haloes.posterior import inverse, mean_of_200c
 from haloledger.haloes.relations import load_relation
 
 HELD = {"relation": "moster2013", "zero_point": "0", "membership": "0"}
@@ -228,3 +230,28 @@ def test_group_near_the_observer_is_drawn_with_volume(make_groups, planck):
     floor = 0.3 * 0.0025
     assert np.mean(z <= floor * 1.001) < 1e-3  # nothing piles up there
     assert z.mean() > 0.0027
+
+
+def two_peaks(z):
+    p = 0.7 * np.exp(-0.5 * ((z - 0.3) / 0.03) ** 2) / 0.03 + 0.3 * np.exp(-0.5 * ((z - 0.6) / 0.04) ** 2) / 0.04
+    return p / p.sum()
+
+
+def scores_of(z, p):
+    return np.interp(ndtr(SCORES), np.cumsum(p), z)[None, :]
+
+
+def test_density_of_a_catalogue_is_drawn_as_it_stands_or_with_the_prior(make_galaxies, planck):
+    z = np.arange(0.05, 1.0, 0.0005)
+    common = {"z": 0.3, "z_err": 0.03, "photometric": True, "log_mstar": 10.6, "log_mstar_err": 0.15}
+    common["z_scores"] = scores_of(z, two_peaks(z))
+    taken, joint = (draws(make_galaxies("g", 1, z_is=s, **common), planck).z for s in ("posterior", "likelihood"))
+    # between scores z runs straight, so that the gap between the peaks holds part of one step
+    assert np.mean(taken < 0.45) == pytest.approx(0.7, abs=0.02)
+    y = 10.6 + 2 * np.log10(planck.luminosity_distance_mpc(z) / planck.luminosity_distance_mpc(0.3))
+    p = two_peaks(z) * planck.volume_element(z) * np.exp(inverse("moster2013", planck).ln_count(y, z, 0.15))
+    assert np.mean(joint < 0.45) == pytest.approx(p[z < 0.45].sum() / p.sum(), abs=0.03)
+    assert abs(np.mean(taken < 0.45) - np.mean(joint < 0.45)) > 0.1
+    assert joint[joint < 0.45].mean() == pytest.approx((p * z)[z < 0.45].sum() / p[z < 0.45].sum(), abs=0.005)
+    haloes = halo_list([make_galaxies("g", 1, **common)], [], planck)
+    assert z_floor(haloes, planck)[0] == pytest.approx(common["z_scores"][0, 0])

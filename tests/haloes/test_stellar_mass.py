@@ -5,6 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
+from haloledger.haloes import k_corrections
 from haloledger.haloes.distances import point_luminosity_distance_mpc
 from haloledger.haloes.stellar_mass import mass_from_gi, mass_from_ks, mass_from_w1, stellar_masses
 
@@ -66,7 +67,8 @@ def test_near_galaxies_use_their_distance(make_galaxies, planck):
     assert 10.3 < masses(m31, planck).log_mstar[0] < 11.1
 
 
-def test_colours_without_correction_stop_at_low_redshift(make_galaxies, planck):
+def test_colours_without_correction_stop_at_low_redshift(make_galaxies, planck, monkeypatch):
+    monkeypatch.setattr(k_corrections, "available", lambda: False)
     mags = {"g": np.array([18.0, 18.0]), "i": np.array([17.0, 17.0])}
     z = np.array([0.05, 0.3])
     assert np.isfinite(masses(make_galaxies("g", 2, z=z, mag=mags), planck).log_mstar).tolist() == [True, False]
@@ -76,3 +78,32 @@ def test_colours_without_correction_stop_at_low_redshift(make_galaxies, planck):
 def test_reach_of_a_calibration_is_said(make_galaxies, planck):
     note = masses(make_galaxies("g", 1, z=0.4, mag={"w1": np.array([15.0])}), planck).note[0]
     assert "beyond its z 0.15" in note
+
+
+UGRIZ = {"u": 19.8, "g": 18.1, "r": 17.2, "i": 16.8, "z": 16.5}
+
+
+def test_published_corrections_of_the_library():
+    pytest.importorskip("kcorrect", reason="the extra `photometry` is not installed")
+    k = k_corrections.k_corrections({b: np.array([m]) for b, m in UGRIZ.items()}, np.array([0.1]))
+    # kcorrect 5.1.9, 2 per cent errors; the library's finer redshift table differs by less than 0.001
+    for band, expected in zip("ugriz", (0.3747, 0.2901, 0.1231, 0.0572, 0.0431), strict=True):
+        assert k[band][0] == pytest.approx(expected, abs=1e-3)
+
+
+def test_colours_are_corrected_where_the_library_is(make_galaxies, planck):
+    pytest.importorskip("kcorrect", reason="the extra `photometry` is not installed")
+    mag = {b: np.full(3, m) for b, m in UGRIZ.items() if b != "u"}
+    mag["i"] = np.array([16.8, np.nan, 16.8])
+    galaxies = make_galaxies("g", 3, z=np.array([0.1, 0.1, 0.9]), mag=mag)
+    found = masses(galaxies, planck)
+    # beyond 0.65, and without i, there is no mass
+    assert np.isfinite(found.log_mstar).tolist() == [True, False, False]
+    assert "K-corrected by kcorrect" in found.note[0]
+    modulus = 5 * np.log10(planck.luminosity_distance_mpc(0.1)) + 25
+    # with u as well K is 0.2901 and 0.0572; four bands give them to 0.04
+    expected = mass_from_gi(18.1 - 16.8 - 0.2901 + 0.0572, 16.8 - 0.0572 - modulus)
+    assert found.log_mstar[0] == pytest.approx(expected, abs=0.05)
+    uncorrected = mass_from_gi(18.1 - 16.8, 16.8 - modulus)
+    # 0.7 x (0.2901 - 0.0572) - 0.4 x 0.0572
+    assert uncorrected - found.log_mstar[0] == pytest.approx(0.140, abs=0.05)

@@ -48,6 +48,7 @@ class Galaxies:
     mag_rest: bool = False  # magnitudes are already corrected to the rest frame
     z_flow: np.ndarray | None = None  # redshift in the CMB frame, for distances; None: z serves
     radius_arcsec: np.ndarray | None = None  # optical radius, NaN where not known
+    z_scores: np.ndarray | None = None  # p(z): redshifts at the normal scores of `redshift_density`, (n, 49); NaN: none
     z_outlier: float = 0.0  # share of outliers among the photometric redshifts
     z_is: str = "likelihood"  # or "posterior": then no volume or mass-function prior is put on z
     mass_is: str = "likelihood"  # of log_mstar; log_m200c is always taken as it stands

@@ -6,6 +6,7 @@ import numpy as np
 
 from haloledger.catalogs.canonical import Galaxies
 from haloledger.catalogs.prepare import Prepared
+from haloledger.catalogs.redshift_density import SCORES, redshift_scores
 from haloledger.catalogs.rows import (
     Rows,
     distance_error,
@@ -29,11 +30,14 @@ def galaxies_from(table: Prepared) -> Galaxies:
     rows.check_names()
     rows.check_numbers()
     rows.check_position()
+    z_scores = _density(rows)
     rows.check_redshift()
     rows.check_log_mass("log_mstar", *STELLAR_MASS_RANGE)
     rows.check_log_mass("log_m200c", *HALO_MASS_RANGE)
     _leave_out_stars(rows)
     photometric = photometric_rows(rows)
+    if z_scores is not None:
+        photometric = photometric | np.isfinite(z_scores[:, 0])
     index = rows.index()
     card = table.card
     bands = [b for b in BANDS if f"mag_{b}" in table.columns]
@@ -62,6 +66,7 @@ def galaxies_from(table: Prepared) -> Galaxies:
         mag_system=system,
         mag_rest=card.magnitudes.rest_frame,
         radius_arcsec=table.number("radius_arcsec")[index] if "radius_arcsec" in table.columns else None,
+        z_scores=None if z_scores is None else z_scores[index],
         z_outlier=card.redshift.outliers,
         z_flow=flow_redshift(table, index),
         z_is=card.redshift.taken_as,
@@ -81,3 +86,21 @@ def _leave_out_stars(rows: Rows) -> None:
     if star.any():
         rows.table.notes.append(f"{rows.table.label}: {int(star.sum())} rows left out: stars by 'object_class'")
     rows.good &= ~star
+
+
+def _density(rows: Rows) -> np.ndarray | None:
+    """p(z) where the table gives it; its median and half width stand in for z and z_err that are not given."""
+    scores = redshift_scores(rows)
+    if scores is None:
+        return None
+    table, middle = rows.table, SCORES.size // 2
+    one = int(np.argmin(np.abs(SCORES - 1)))
+    half = 0.5 * (scores[:, one] - scores[:, -1 - one])
+    for name, value in (("z", scores[:, middle]), ("z_err", half)):
+        given = table.number(name)
+        table.columns[name] = np.where(np.isnan(given), value, given)
+    said = np.isin(np.char.lower(table.text("z_kind").astype(str)), ["spec", "spectroscopic"])
+    scores[said] = np.nan
+    taken = int(np.isfinite(scores[:, 0]).sum())
+    table.notes.append(f"{table.label}: p(z) of {taken} rows is used, as a likelihood: volume and number act on top")
+    return scores

@@ -10,6 +10,7 @@ from typing import Any
 import numpy as np
 
 from haloledger.catalogs.cards.card import Card, Drop, NativeColumn
+from haloledger.catalogs.density_names import density_columns
 from haloledger.catalogs.frames import to_heliocentric
 from haloledger.catalogs.nativeunits import SHARE, carries_h, factor, parse, split_h
 from haloledger.catalogs.raw import RawColumn, RawTable
@@ -67,6 +68,11 @@ def prepare_bare(raw: RawTable, kind: str) -> Prepared:
         columns[ours] = values * _bare_factor(raw.file, native, column.unit, fields[ours], values)
         if wrong:
             bad[ours] = wrong
+    for native in density_columns(raw.columns) if kind == "galaxies" else []:
+        values, wrong = raw.columns[native].numbers()
+        columns[native] = values
+        if wrong:
+            bad[native] = wrong
     card = Card(raw.label, kind, "", "", "from memory", Path(raw.file), {})
     return Prepared(raw.file, raw.label, kind, card, True, np.arange(1, raw.n + 1), columns, bad, notes)
 
@@ -82,7 +88,7 @@ def _match_names(raw: RawTable, kind: str) -> dict[str, str]:
     may_lack = set()
     if kind == "groups" and {"sigma_v", "richness", "lx"} & set(found) and "log_mass" not in found:
         may_lack = {"log_mass", "mass_def"}  # a proxy stands in
-    if "distance_mpc" in found:
+    if "distance_mpc" in found or (kind == "galaxies" and density_columns(raw.columns)):
         may_lack.add("z")
     for ours, spec in FIELDS[kind].items():
         if spec.required and ours not in found and ours not in may_lack:
@@ -128,8 +134,9 @@ def _unknown_names(raw: RawTable, kind: str, found: dict[str, str]) -> list[str]
         )
     free = [ours for ours in FIELDS[kind] if ours not in found]
     notes = []
+    density = density_columns(raw.columns) if kind == "galaxies" else []
     for native in raw.columns:
-        if native not in found.values():
+        if native not in found.values() and native not in density:
             alike = near(native, free, 0.8) or _shares_word(native, free)
             if alike:
                 notes.append(f"{raw.label}: column '{native}' is not used. Did you mean '{alike}'?")

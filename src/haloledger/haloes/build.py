@@ -31,7 +31,7 @@ from haloledger.haloes.phase_space import Extent, extent
 from haloledger.haloes.posterior import MASS_RELATION
 from haloledger.haloes.relations import STELLAR_TO_HALO
 from haloledger.haloes.satellites import occupation
-from haloledger.haloes.table import Haloes, change, join, rows
+from haloledger.haloes.table import Haloes, change, has_density, join, rows, with_densities
 
 MEDIAN_RELATION = "moster2013"  # for sizes in the search for doubles and members alone
 COMBINE = ("weighted", "precedence")
@@ -76,7 +76,7 @@ def halo_list(
         galaxy_parts = [
             _tidy(without_twins, part, "Galaxy rows listed twice in {}: {}.", notes, cosmos) for part in galaxy_parts
         ]
-        merged_galaxies = merge_galaxies(galaxy_parts, cosmos)
+        merged_galaxies = merge_galaxies(with_densities(galaxy_parts), cosmos)
         doubles = sum(map(len, galaxy_parts)) - len(merged_galaxies)
         if doubles:
             notes.append(f"Galaxies listed in more than one catalogue, counted once: {doubles}.")
@@ -132,6 +132,8 @@ def mass_ceiling(haloes: Haloes, cosmos: Cosmos) -> np.ndarray:
     """
     z = point_redshift(haloes, cosmos)
     far = z + 3 * np.hypot(haloes.z_err, PECULIAR_KMS / SPEED_OF_LIGHT_KMS)
+    wide = has_density(haloes)
+    far[wide] = np.maximum(far[wide], haloes.z_scores[wide, -1:].ravel())
     flow = np.log10(cosmos.luminosity_distance_mpc(far) / cosmos.luminosity_distance_mpc(z))
     measured = CEILING_DISTANCE * distance_error_share(haloes) / np.log(10)
     shift = 2 * np.where(by_distance(haloes), measured, flow) + 2 * ZERO_POINT_DEX

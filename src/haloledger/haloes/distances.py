@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 
 from haloledger.cosmos.background import Cosmos
-from haloledger.haloes.table import Haloes
+from haloledger.haloes.table import Haloes, has_density
 
 SPEED_OF_LIGHT_KMS = 299792.458
 PECULIAR_KMS = 300.0  # common practice for the field, one dimension
@@ -58,5 +58,7 @@ def z_floor(haloes: Haloes, cosmos: Cosmos) -> np.ndarray:
     z = point_redshift(haloes, cosmos)
     err = np.hypot(haloes.z_err, PECULIAR_KMS / SPEED_OF_LIGHT_KMS * (1 + z))
     low = np.maximum(z - 3 * err, LOWEST_SHARE * z)
-    low = np.where(haloes.z_outlier > 0, np.minimum(low, LOWEST_OUTLIER * z), low)
+    wide = has_density(haloes)
+    low[wide] = np.maximum(haloes.z_scores[wide, :1].ravel(), LOWEST_SHARE * z[wide])
+    low = np.where((haloes.z_outlier > 0) & ~wide, np.minimum(low, LOWEST_OUTLIER * z), low)
     return np.where(near, z * np.maximum(np.exp(-3 * distance_error_share(haloes)), LOWEST_SHARE), low)

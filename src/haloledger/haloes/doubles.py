@@ -217,7 +217,7 @@ def _absorb(a: Haloes, i: np.ndarray, b: Haloes, cosmos: Cosmos) -> Haloes:
         (
             "spectroscopic redshift",
             a.photometric[i] & ~b.photometric,
-            ("z", "z_flow", "z_err", "photometric", "z_outlier", "z_posterior"),
+            ("z", "z_flow", "z_err", "photometric", "z_scores", "z_outlier", "z_posterior"),
         ),
         ("optical radius", _lacks(a.optical_radius_kpc[i], b.optical_radius_kpc), ("optical_radius_kpc",)),
         ("group", (a.listed_group[i] == "") & (b.listed_group != ""), ("listed_group",)),

@@ -98,6 +98,7 @@ def _shared(table: Galaxies | Groups, catalogue: int, cosmos: Cosmos) -> dict[st
         "z_flow": _flow(table, z_given, cosmos),
         "z_err": np.where(z_given, np.nan_to_num(table.z_err, nan=0.0), 0.0),
         "photometric": np.asarray(table.photometric, dtype=bool),
+        "z_scores": _scores(table),
         "z_outlier": np.where(table.photometric, getattr(table, "z_outlier", 0.0), 0.0),
         "distance_mpc": np.asarray(table.distance_mpc, dtype=float),
         "distance_err_mpc": np.asarray(table.distance_err_mpc, dtype=float),
@@ -127,6 +128,13 @@ def _optical_radius_kpc(galaxies: Galaxies, cosmos: Cosmos) -> np.ndarray:
     if galaxies.radius_arcsec is None:
         return np.full(len(galaxies), np.nan)
     return np.radians(galaxies.radius_arcsec / 3600) * cosmos.angular_distance_kpc(point_redshift(galaxies, cosmos))
+
+
+def _scores(table: Galaxies | Groups) -> np.ndarray:
+    given = getattr(table, "z_scores", None)
+    if given is None:
+        return np.empty((len(table), 0))
+    return np.where(np.asarray(table.photometric, dtype=bool)[:, None], given, np.nan)
 
 
 def _flow(table: Galaxies | Groups, z_given: np.ndarray, cosmos: Cosmos) -> np.ndarray:

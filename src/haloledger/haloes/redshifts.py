@@ -10,7 +10,8 @@ A photometric redshift may be an outlier: with the catalogue's share f its likel
 
     (1 - f) N(z_obs | z, err) + f N(z_obs | z, 0.3 (1 + z_obs))
 
-and which of the two holds is drawn by their evidence under the same prior.
+and which of the two holds is drawn by their evidence under the same prior. A p(z) from the catalogue takes the place of
+the whole likelihood, or of the whole posterior where the catalogue says it is one.
 """
 
 from __future__ import annotations
@@ -20,6 +21,7 @@ from dataclasses import dataclass
 import numpy as np
 from scipy.special import ndtri
 
+from haloledger.catalogs.redshift_density import SCORES
 from haloledger.cosmos.background import Cosmos
 from haloledger.engine.universe import Universe
 from haloledger.haloes.distances import (
@@ -35,7 +37,7 @@ from haloledger.haloes.distances import (
 )
 from haloledger.haloes.nuisances import RelationOfDraw
 from haloledger.haloes.posterior import U_NODES, inverse
-from haloledger.haloes.table import Haloes, rows
+from haloledger.haloes.table import Haloes, has_density, rows
 
 WIDE = 0.05  # error over redshift above which a spectroscopic redshift too is drawn with its prior: the near field
 GRID = np.linspace(-5.0, 5.0, 49)  # in errors around the observed redshift
@@ -78,11 +80,15 @@ def _hubble_flow(haloes: Haloes, listed, score, universe: Universe, relation: Re
     err = np.hypot(haloes.z_err, PECULIAR_KMS / SPEED_OF_LIGHT_KMS * (1 + listed))
     z = np.maximum(listed[:, None] + err[:, None] * score, np.maximum(LOWEST_SHARE * listed, MIN_Z)[:, None])
     galaxy = haloes.kind == "galaxy"
+    given = has_density(haloes)
+    as_given = np.flatnonzero(given & haloes.z_posterior)
+    if as_given.size:
+        z[as_given] = _at_scores(haloes.z_scores[as_given], score[as_given])
     prior = ~haloes.z_posterior & ((galaxy & haloes.photometric) | (err > WIDE * listed))
     joint = np.flatnonzero(prior)
     if joint.size:
         part = rows(haloes, joint)
-        table, evidence = _quantiles(part, listed[joint], err[joint], relation, zero, cosmos)
+        table, evidence = _quantiles(part, listed[joint], err[joint], relation, zero, cosmos, given=True)
         z[joint] = _look_up(table, score[joint], relation, zero)
         _draw_outliers(z, joint, part, listed[joint], evidence, score, universe, relation, zero, cosmos)
     return z
@@ -90,7 +96,7 @@ def _hubble_flow(haloes: Haloes, listed, score, universe: Universe, relation: Re
 
 def _draw_outliers(z, joint, haloes: Haloes, listed, evidence, score, universe, relation, zero, cosmos: Cosmos) -> None:
     """Where the draw is an outlier, write its redshift into z, in place."""
-    open_ = np.flatnonzero(haloes.photometric & (haloes.z_outlier > 0))
+    open_ = np.flatnonzero(haloes.photometric & (haloes.z_outlier > 0) & ~has_density(haloes))
     if not open_.size:
         return
     part, at = rows(haloes, open_), listed[open_]
@@ -104,14 +110,21 @@ def _draw_outliers(z, joint, haloes: Haloes, listed, evidence, score, universe, 
     z[index] = np.where(out, _look_up(table, score[index], relation, zero), z[index])
 
 
-def _quantiles(haloes: Haloes, listed, err, relation: RelationOfDraw, zero, cosmos: Cosmos, nodes=None):
+def _quantiles(haloes: Haloes, listed, err, relation: RelationOfDraw, zero, cosmos: Cosmos, nodes=None, given=False):
     """z at the normal scores U_NODES, [halo, relation, zero point, u], and ln evidence [halo, relation, zero point]."""
     nodes = np.linspace(0, 1, GRID.size) if nodes is None else nodes
     low = np.maximum(np.maximum(listed - 5 * err, LOWEST_SHARE * listed), MIN_Z)
-    span = (listed + 5 * err - low)[:, None]
+    high = listed + 5 * err
+    own = np.flatnonzero(has_density(haloes) & given)
+    if own.size:
+        low[own], high[own] = haloes.z_scores[own, 0], haloes.z_scores[own, -1]
+    span = (high - low)[:, None]
     grid = low[:, None] + span * nodes
     shift = 2 * np.log10(cosmos.luminosity_distance_mpc(grid) / cosmos.luminosity_distance_mpc(listed)[:, None])
-    ln_p = -0.5 * ((grid - listed[:, None]) / err[:, None]) ** 2 + np.log(cosmos.volume_element(grid))
+    ln_p = -0.5 * ((grid - listed[:, None]) / err[:, None]) ** 2
+    if own.size:
+        ln_p[own] = _ln_density(haloes.z_scores[own], grid[own])
+    ln_p += np.log(cosmos.volume_element(grid))
     y = np.where(haloes.err_holds_z[:, None], 0.0, shift) + haloes.value[:, None]
     counted = ((haloes.mass_kind == "stellar") & ~haloes.posterior)[:, None, None]
     shape = (len(haloes), len(relation.names), ZERO_POINTS.size)
@@ -125,6 +138,23 @@ def _quantiles(haloes: Haloes, listed, err, relation: RelationOfDraw, zero, cosm
         mean = np.exp(ln_joint - top[..., None]).mean(axis=-1)
         evidence[:, i] = top + np.log(mean * span / err[:, None])
     return table, evidence
+
+
+def _at_scores(z_scores: np.ndarray, score: np.ndarray) -> np.ndarray:
+    """Redshifts of tabulated p(z) at normal scores (n, k), held at the ends."""
+    at = np.clip((score - SCORES[0]) / (SCORES[1] - SCORES[0]), 0, SCORES.size - 1)
+    low = np.minimum(at.astype(int), SCORES.size - 2)
+    row, w = np.arange(len(z_scores))[:, None], at - low
+    return (1 - w) * z_scores[row, low] + w * z_scores[row, low + 1]
+
+
+def _ln_density(z_scores: np.ndarray, grid: np.ndarray) -> np.ndarray:
+    """ln p(z) on grids (n, k): the normal density at the score, over dz / dscore."""
+    low = np.clip((z_scores[:, None, :] <= grid[:, :, None]).sum(axis=-1) - 1, 0, SCORES.size - 2)
+    row = np.arange(len(z_scores))[:, None]
+    step = np.maximum(z_scores[row, low + 1] - z_scores[row, low], 1e-9)
+    score = SCORES[low] + (SCORES[1] - SCORES[0]) * (grid - z_scores[row, low]) / step
+    return -0.5 * score**2 - np.log(step)
 
 
 def _centre(zero: np.ndarray) -> float:

@@ -12,6 +12,7 @@ import numpy as np
 
 from haloledger.catalogs.canonical import Galaxies
 from haloledger.cosmos.background import Cosmos
+from haloledger.haloes import k_corrections
 
 ORDER = ("given", "ks", "w1", "gi")
 MIN_Z = 1e-4
@@ -97,11 +98,28 @@ def _gi(galaxies: Galaxies, modulus, z):
     c = calibrations()["gi"]
     if not {"g", "i"} <= set(galaxies.mag) or "Vega" in (galaxies.mag_system.get(b, "AB") for b in "gi"):
         return _nothing(len(galaxies))
+    if not galaxies.mag_rest and k_corrections.available():
+        return _corrected_gi(galaxies, modulus, z)
     rest = galaxies.mag_rest
     log_mstar = mass_from_gi(galaxies.mag["g"] - galaxies.mag["i"], galaxies.mag["i"] - modulus)
     log_mstar = np.where(z <= c["z_max" if rest else "z_max_observed"], log_mstar, np.nan)
     note = c["note"] if rest else f"{c['note']}, no K-correction"
     return log_mstar, np.full(len(galaxies), c["error_dex" if rest else "error_dex_observed"]), note
+
+
+def _corrected_gi(galaxies: Galaxies, modulus, z):
+    c = calibrations()["gi"]
+    # at the listed redshift: the mass of a photometric galaxy moves with its distance, not with its K-correction
+    optical = {b: m for b, m in galaxies.mag.items() if b in k_corrections.BANDS and _is_ab(galaxies, b)}
+    wanted = np.isnan(galaxies.log_mstar)
+    k = k_corrections.k_corrections(optical, np.where(wanted & (z <= c["z_max"]), z, np.nan))
+    g, i = (galaxies.mag[b] - k[b] for b in "gi")
+    note = f"{c['note']}, K-corrected by {k_corrections.library()}"
+    return mass_from_gi(g - i, i - modulus), np.full(len(galaxies), c["error_dex"]), note
+
+
+def _is_ab(galaxies: Galaxies, band: str) -> bool:
+    return galaxies.mag_system.get(band, "AB") == "AB"
 
 
 def _nothing(n: int):

@@ -9,7 +9,7 @@ import numpy as np
 
 @dataclass(frozen=True)
 class Haloes:
-    """One row per halo; all arrays have the shape (n,). Made by `build.halo_list`, in the order of `id`."""
+    """One row per halo; arrays have the shape (n,) unless another is given. Made by `build.halo_list`, by id."""
 
     id: np.ndarray  # "label:id" of the row that gives centre and mass
     kind: np.ndarray  # "galaxy" or "group"
@@ -20,6 +20,7 @@ class Haloes:
     z_flow: np.ndarray  # what sets the distance in the Hubble flow: in the CMB frame where the frame of z is known
     z_err: np.ndarray
     photometric: np.ndarray  # bool
+    z_scores: np.ndarray  # (n, 49): p(z) as redshifts at the catalogues' normal `SCORES`, NaN where none; (n, 0)
     z_outlier: np.ndarray  # share of outliers among photometric redshifts like this one
     distance_mpc: np.ndarray  # luminosity distance, NaN where none
     distance_err_mpc: np.ndarray
@@ -83,8 +84,20 @@ def change(haloes: Haloes, **columns) -> Haloes:
 
 def join(parts: list[Haloes]) -> Haloes:
     """The haloes of all parts, one after the other, their notes too."""
+    parts = with_densities(parts)
     columns = {name: np.concatenate([getattr(p, name) for p in parts]) for name in COLUMNS}
     return Haloes(**columns, notes=tuple(note for p in parts for note in p.notes))
+
+
+def has_density(haloes: Haloes) -> np.ndarray:
+    """Where the catalogue gives p(z), shape (n,)."""
+    return np.isfinite(haloes.z_scores).all(axis=1) & (haloes.z_scores.shape[1] > 0)
+
+
+def with_densities(parts: list[Haloes]) -> list[Haloes]:
+    """The parts with p(z) tables of one width: none where no part has any."""
+    width = max((p.z_scores.shape[1] for p in parts), default=0)
+    return [p if p.z_scores.shape[1] == width else change(p, z_scores=np.full((len(p), width), np.nan)) for p in parts]
 
 
 COLUMNS = tuple(f.name for f in fields(Haloes) if f.name != "notes")

@@ -171,6 +171,8 @@ def _check(card: Card) -> None:
             )
     if "z" not in card.columns and "distance_mpc" not in card.columns and card.kind != "bursts":
         raise InputError(f"{card.path}: neither z nor distance_mpc is named. Add one under [columns].")
+    if not 0 <= card.redshift.outliers < 1:
+        raise InputError(f"{card.path}: redshift.outliers = {card.redshift.outliers:g}: write a share, such as 0.05.")
     for rule in card.drop:
         if bool(rule.column) == bool(rule.ours):
             raise InputError(f"{card.path}: a [[drop]] must name either 'column' (native) or 'ours'. Found {rule}.")
