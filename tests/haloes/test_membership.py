@@ -201,6 +201,30 @@ def test_galaxies_in_no_group_of_a_complete_list_are_light(sky, make_galaxies, m
     assert (10 ** naive.log_m200c[lone]).sum(axis=0).mean() > 1.3 * truth
 
 
+def test_draws_of_a_part_equal_those_of_the_whole_to_the_last_bit(sky, make_galaxies, planck):
+    galaxies, _ = sky.galaxies(make_galaxies, np.ones(sky.host.size, bool))
+    haloes = halo_list([galaxies], [], planck)
+    assert np.nanmax(haloes.n_satellites) > 10
+    index = np.argsort(-np.nan_to_num(haloes.n_satellites))[:60]
+    universe = Universe(3, 40)
+    whole = draw_haloes(haloes, index, universe, "dutton2014", planck)
+    for part in (np.arange(60)[::-1], np.array([7]), np.arange(0, 60, 7)):
+        some = draw_haloes(haloes, index[part], universe, "dutton2014", planck)
+        for name in vars(whole):
+            assert np.array_equal(getattr(some, name), getattr(whole, name)[part]), name
+
+
+def test_photometric_galaxies_are_lone_only_where_members_are_published(sky, make_galaxies, make_groups, planck):
+    galaxies, _ = sky.galaxies(make_galaxies, np.ones(sky.host.size, bool))
+    n = len(galaxies)
+    photo = replace(galaxies, photometric=np.ones(n, bool), z_err=np.full(n, 0.03))
+    assert np.isnan(halo_list([photo], [], planck).n_satellites).all()
+    group = make_groups("c", 1, ra_deg=20.0, dec_deg=-60.0, log_mass=13.5)
+    named = replace(photo, group=np.array(["c:000000", *[""] * (n - 1)], dtype=object))
+    haloes = halo_list([named], [group], planck)
+    assert np.all(haloes.n_satellites[haloes.kind == "galaxy"] == 0)
+
+
 @pytest.mark.parametrize("z", [0.0, 0.5])
 def test_satellite_fraction_and_hosts_as_by_integration(z, planck):
     # of the mean over relations, without error; a plain sum over the mass function

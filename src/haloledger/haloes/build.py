@@ -207,7 +207,7 @@ def _without_members(galaxies: Haloes, groups: Haloes | None, notes: list[str], 
         for n, p in _zip(note, found, lone)
     ]
     changed = change(galaxies, p_member=found.listed + found.unlisted, p_hosted=found.hosted, note=note)
-    changed = with_company(changed, found.satellites, found.share, cosmos)
+    changed = with_company(changed, found.satellites, found.share, published(galaxies, names), cosmos)
     return change(rows(changed, own), notes=galaxies.notes), groups
 
 

@@ -4,7 +4,8 @@
 
 A lone galaxy of a deep list is no random central: a heavy halo would have shown members. One with thirty is heavier
 than its own light says. The limit, in stellar mass at the galaxy's distance, is read off the list in 324 cells of the
-sky; lists too short for that say nothing, nor do galaxies with photometric redshifts, whose company is not known.
+sky; lists too short for that say nothing. The neighbours of a galaxy with a photometric redshift are not known, unless
+its list names members of groups: then a galaxy that is in none is lone.
 """
 
 from __future__ import annotations
@@ -26,11 +27,18 @@ FINE = np.linspace(-4.2, 4.2, 57)
 BANDS = 18
 
 
-def with_company(galaxies: Haloes, n_satellites: np.ndarray, share: np.ndarray, cosmos: Cosmos) -> Haloes:
-    """Galaxies with the number of their satellites, the limit and completeness of their lists."""
+def with_company(
+    galaxies: Haloes, n_satellites: np.ndarray, share: np.ndarray, published: np.ndarray, cosmos: Cosmos
+) -> Haloes:
+    """Galaxies with the number of their satellites, the limit and completeness of their lists.
+
+    published  galaxies that their list puts in a listed group (n,)
+    """
     limit = _limits(galaxies, cosmos)
-    sharp = galaxies.z_err * SPEED_OF_LIGHT_KMS < SHARPEST_KMS
-    told = sharp & ~galaxies.photometric & np.isfinite(limit) & (galaxies.mass_kind == "stellar") & ~galaxies.posterior
+    sharp = (galaxies.z_err * SPEED_OF_LIGHT_KMS < SHARPEST_KMS) & ~galaxies.photometric
+    with_members = np.isin(galaxies.catalogue, np.unique(galaxies.catalogue[published]))
+    n_satellites = np.where(sharp, n_satellites, 0.0)
+    told = (sharp | with_members) & np.isfinite(limit) & (galaxies.mass_kind == "stellar") & ~galaxies.posterior
     note = galaxies.note.copy()
     many = told & (n_satellites >= SAID)
     note[many] = [f"{n}; weighed with {k:.0f} satellites" for n, k in zip(note[many], n_satellites[many], strict=True)]
