@@ -186,3 +186,21 @@ def test_stellar_masses_of_ks_against_the_50_mpc_catalogue(nearby_sky, planck):
         # most of the difference is the distance: flow against measured ones; at one distance 0.06 dex are left
         assert np.median(x) == pytest.approx(offset, abs=0.03)
         assert 1.4826 * np.median(np.abs(x - np.median(x))) == pytest.approx(scatter, abs=0.03)
+
+
+def test_stellar_masses_of_zcosmos_are_those_of_its_colours(shared_data):
+    """zCOSMOS lists rest-frame M_B and M_I and masses from many bands; log M* = 1.15 + 0.70 (g - i) - 0.4 M_i."""
+    from astropy.table import Table
+
+    table = Table.read(shared_data / "galaxies" / "zcosmos_bright.fits")
+    blue, red, mass = (np.array(table[name], dtype=float) for name in ("M_B", "M_I", "Mass"))
+    use = (table["Flag"] == 1) & (table["Type"] == 0) & (mass > 1e7) & np.isfinite(blue) & np.isfinite(red)
+    assert use.sum() > 15_000
+    log_mstar, colour = np.log10(mass[use]), (blue - red)[use]
+    # the g - i with which the calibration gives the listed mass: of galaxies from blue to red, and a line in B - I
+    needed = (log_mstar - 1.15 + 0.4 * red[use]) / 0.70
+    assert np.quantile(needed, [0.16, 0.5, 0.84]) == pytest.approx([0.13, 0.56, 1.01], abs=0.05)
+    slope, zero = np.polyfit(colour, needed, 1)
+    assert slope == pytest.approx(0.92, abs=0.05)
+    rest = 0.70 * (needed - slope * colour - zero)
+    assert 1.4826 * np.median(np.abs(rest - np.median(rest))) == pytest.approx(0.08, abs=0.02)  # dex
