@@ -34,6 +34,19 @@ def group(name="C1", z=0.1, log_mass=14.0, mass_def="200c", ra=HERE[0], dec=HERE
     return {"id": name, "ra": ra, "dec": dec, "z": z, "log_mass": log_mass, "mass_def": mass_def, **more}
 
 
+def member_host(name="H", group_id="C1", z=0.1) -> dict:
+    """A galaxy at HERE that names its group."""
+    return {
+        "id": name,
+        "ra": HERE[0],
+        "dec": HERE[1],
+        "z": z,
+        "log_mstar": 10.5,
+        "log_mstar_err": 0.1,
+        "group_id": group_id,
+    }
+
+
 def fixed_concentration(tmp_path, model: str, value: float) -> str:
     """The shipped model with a concentration that is a number, as a user's own file."""
     from haloledger.paths import data_folder

@@ -120,16 +120,35 @@ def test_burst_without_redshift_gets_no_residual():
     assert "no residual" in row["note"]
 
 
-def test_group_around_the_burst_is_at_the_source():
-    table = sky.bursts(sky.burst(z=0.1))
+def test_group_that_lists_the_host_is_at_the_source():
+    table = sky.bursts(sky.burst(z=0.1, host_id="H"))
     groups = sky.Table(rows=[sky.group(z=0.1005, log_mass=14.0, dec=sky.HERE[1] + 0.02)])
-    ledgers = audit(table, groups=[groups], models=["blended"], draws=400, keep_draws=True)
+    hosts = sky.Table(rows=[sky.member_host()])
+    ledgers = audit(table, galaxies=[hosts], groups=[groups], models=["blended"], draws=400, keep_draws=True)
     row = ledgers.sightlines[0]
     assert row["dm_foreground_mean"].value == 0
     assert row["dm_at_source_mean"].value > 0
     assert "burst sits in" in ledgers.entries["note"][0]
     # the depth is drawn: the burst is as often in front of the centre as behind it; 3 sigma of 400 draws
     assert ledgers.entries["p_front"][0] == pytest.approx(0.5, abs=0.08)
+
+
+def test_a_group_that_may_hold_the_burst_does_so_in_a_share_of_draws():
+    # nobody lists the host: the share falls with the velocity between burst and group; else it is in front or behind
+    share = {}
+    for kms in (0, 900, 1500):
+        z = 0.1 + 1.1 * kms / 299792.458
+        groups = sky.Table(rows=[sky.group(z=0.1, log_mass=14.0, dec=sky.HERE[1] + 0.02)])
+        ledgers = audit(sky.bursts(sky.burst(z=z)), groups=[groups], models=["blended"], draws=2000, keep_draws=True)
+        terms = ledgers.draws
+        assert not np.any((terms.dm_foreground > 0) & (terms.dm_at_source > 0))  # in one draw it is one or the other
+        share[kms] = (terms.dm_at_source > 0).mean()
+    # sigma_v = 445 km/s and a chord of 1.9 Mpc, by hand: odds 200 / Om(z) x H chord x N(dv)
+    by_hand = {k: (o := 200 / 0.3737 * 134 * np.exp(-0.5 * (k / 445) ** 2) / (2.507 * 445)) / (1 + o) for k in share}
+    for kms, expected in by_hand.items():
+        assert share[kms] == pytest.approx(expected, abs=0.06)
+    assert share[0] > 0.95
+    assert share[1500] < 0.35
 
 
 def test_host_is_never_foreground(planck):

@@ -56,11 +56,15 @@ def test_a_burst_in_the_middle_of_its_group_meets_half_of_it(planck):
     assert np.isnan(entry.share)
 
 
-AT_SOURCE = {"groups": [sky.Table(rows=[sky.group(z=0.1005, log_mass=14.0, dec=sky.HERE[1] + 0.02)])]}
+AT_SOURCE = {
+    "groups": [sky.Table(rows=[sky.group(z=0.1005, log_mass=14.0, dec=sky.HERE[1] + 0.02)])],
+    "galaxies": [sky.Table(rows=[sky.member_host("H", "C1", z=0.1)])],
+}
+"""A group that lists the host among its members."""
 
 
 def test_at_source_counts_in_the_sum_when_asked():
-    line = sky.bursts(sky.burst(z=0.1))
+    line = sky.bursts(sky.burst(z=0.1, host_id="H"))
     apart, asked = (
         first(audit(line, **AT_SOURCE, models=["blended"], draws=300, source_in_sum=use)) for use in (False, True)
     )
@@ -75,7 +79,9 @@ def test_at_source_counts_in_the_sum_when_asked():
 
 
 def test_host_without_its_halo_beside_the_group_it_sits_in():
-    line = sky.bursts(sky.burst("A", z=0.1), {**sky.burst("B", z=0.1), "ra": sky.HERE[0] + 3.0})
+    line = sky.bursts(
+        sky.burst("A", z=0.1, host_id="H"), {**sky.burst("B", z=0.1, host_id=""), "ra": sky.HERE[0] + 3.0}
+    )
     rows = audit(line, **AT_SOURCE, models=["blended"], draws=2000).to_pandas()[0].set_index("burst")
     inner, whole = defaults()["host_without_halo"], defaults()["host"]
     # 2000 draws know the median to 0.027 in the logarithm

@@ -57,13 +57,20 @@ def sightline_row(
 class Gas:
     """What the entries of one ledger hold: draws (n_haloes, n_draws) [pc cm-3], and the model behind each row.
 
-    in_sum  rows that count in the foreground sum (n_haloes,)
+    foreground  halo gas that counts in the foreground sum
+    at_source   halo gas in front of the burst in a halo it sits in
+    disc        interstellar medium of the galaxy
     """
 
-    dm: np.ndarray
+    foreground: np.ndarray
+    at_source: np.ndarray
     disc: np.ndarray
-    in_sum: np.ndarray
     models: list[Model]
+
+    @property
+    def dm(self) -> np.ndarray:
+        """All halo gas."""
+        return self.foreground + self.at_source
 
 
 def entry_rows(
@@ -73,15 +80,15 @@ def entry_rows(
 
     Haloes that no draw crosses, gas or disc, are left out.
     """
-    dm, foreground = gas.dm, gas.in_sum
-    share = np.ma.masked_all(len(dm))
-    share[foreground] = mean_shares(dm[foreground])
-    own = np.full(len(dm), np.nan)
-    own[foreground], rest = variance_shares(dm[foreground], shared)
+    dm = gas.dm
+    share = mean_shares(gas.foreground)
+    own, rest = variance_shares(gas.foreground, shared)
+    aside = (dm > 0).any(axis=1) & ~(gas.foreground > 0).any(axis=1)
+    share[aside], own[aside] = np.ma.masked, np.nan
     crossed = np.flatnonzero(((dm > 0) | (gas.disc > 0)).any(axis=1))
     order = crossed[np.lexsort((haloes.id[crossing.index[crossed]], -dm[crossed].mean(axis=1)))]
     rows = [_entry_row(i, sightline, model, haloes, crossing, gas, share[i], own[i]) for i in order]
-    if (foreground & (dm > 0).any(axis=1)).any():
+    if (gas.foreground > 0).any():
         rows.append({"burst": sightline.burst, "model": model.name, "halo": "shared", "variance_share": rest})
     return rows
 
@@ -122,7 +129,7 @@ def _entry_row(i, sightline, model, haloes, crossing: Crossing, gas: Gas, share,
         "dm_p84": float(spread["p84"]),
         "dm_crossed_p50": float(np.median(dm[dm > 0])) if (dm > 0).any() else None,
         "share": None if np.ma.is_masked(share) else float(share),
-        "variance_share": float(own) if gas.in_sum[i] else None,
+        "variance_share": _or_none(own),
         "boundary_arcmin": float(np.degrees(boundary) * 60),
         "note": "; ".join(_entry_notes(i, h, haloes, crossing, gas)),
         **_disc_cells(gas.disc[i]),
@@ -150,9 +157,11 @@ def _entry_notes(i, h, haloes: Haloes, crossing: Crossing, gas: Gas) -> list[str
         notes.append(f"outside the model's redshift range {z_low:g}-{z_high:g}")
     if np.median(crossing.log_m200c[i]) < LOG_M_LEAST:
         notes.append(f"lighter than 1e{LOG_M_LEAST:g} Msun: the diffuse term counts the gas of such haloes too")
-    if crossing.at_source[i]:
-        place = "in the foreground sum, as asked" if gas.in_sum[i] else "outside the foreground sum"
-        notes.append(f"the burst sits in this halo: {place}, depth drawn")
+    inside = float(crossing.at_source[i].mean())
+    if inside > 0:
+        place = "outside the foreground sum" if (gas.at_source[i] > 0).any() else "in the foreground sum, as asked"
+        how_often = "" if inside == 1 else f" in {inside:.0%} of draws"
+        notes.append(f"the burst sits in this halo{how_often}: {place}, depth drawn")
     return notes
 
 

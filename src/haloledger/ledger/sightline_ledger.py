@@ -19,7 +19,7 @@ from haloledger.haloes.draws import relation_notes
 from haloledger.haloes.table import rows
 from haloledger.ledger.budget import Ends, budget
 from haloledger.ledger.by_hand import OwnGas
-from haloledger.ledger.crossing import Crossing, cross
+from haloledger.ledger.crossing import Crossing, cross, join, with_burst_inside
 from haloledger.ledger.disc_crossing import cross_discs, disc_notes
 from haloledger.ledger.entries import halo_dm
 from haloledger.ledger.kept import census_factor
@@ -29,13 +29,17 @@ from haloledger.reach.census import Census, take_census
 from haloledger.reach.coverage import deepest_by_mass, place, reach_bounds
 from haloledger.reach.diffuse import DiffuseWidth, solve_width
 from haloledger.sightlines.draws import Sightline, directions, given_redshift, observed_dm
-from haloledger.sightlines.host import holds_burst, is_host
+from haloledger.sightlines.host import is_host, p_holds_burst
 from haloledger.sightlines.near import near_pairs
 from haloledger.sightlines.redshift import redshift_from_dm
 from haloledger.sightlines.terms import host_obs, host_rest, mw_disc, mw_halo
 
 SIGMAS = 5.0
 """Localisation and centre errors are searched out to this many sigma."""
+AT_ONCE = 400
+"""Near haloes drawn at once; most turn out not to be met, and their draws are let go."""
+DISC_KPC = 100.0
+"""A disc may lie this far from a halo's drawn centre."""
 LOCAL = "local"  # haloes of the built-in table: they say nothing of where catalogues look
 LOCAL_Z = 0.012
 """Below it a distance taken from the redshift alone is poor (50 Mpc)."""
@@ -58,6 +62,7 @@ class Ground:
     bursts: Bursts
     haloes: Haloes
     near: list[np.ndarray]  # halo rows that could touch burst i
+    widest_r200c: float  # the farthest boundary of all models
     gas: list[GasGround]
     footprints: list
     universe: Universe
@@ -96,10 +101,12 @@ def prepare(
     own_gas = own_gas or {}
     listed = rows(haloes, np.flatnonzero((haloes.kind != LOCAL) & (haloes.p_member < 1)))
     models = [*gas, *(own.model for own in own_gas.values() if own.model is not None)]
+    widest = max(m.boundary_r200c for m in models)
     return Ground(
         bursts=bursts,
         haloes=haloes,
-        near=_near(bursts, haloes, max(m.boundary_r200c for m in models), cosmos),
+        near=_near(bursts, haloes, widest, cosmos),
+        widest_r200c=widest,
         gas=[_gas_ground(m, universe, cosmos) for m in gas],
         footprints=footprints,
         universe=universe,
@@ -132,7 +139,8 @@ def make_ledger(ground: Ground, i: int, keep_draws: bool = False) -> list[Ledger
         host, host_said = host_obs(ground.bursts, i, sightline.z, ground.universe, crossing.halo_modelled)
         dm, models = _halo_gas(ground, gas.model, crossing, crossing_for)
         discs = cross_discs(sightline, ground.haloes, crossing, ground.universe, ground.cosmos)
-        held = Gas(dm, discs.dm, ~crossing.at_source | ground.source_in_sum, models)
+        in_sum = ~crossing.at_source | ground.source_in_sum
+        held = Gas(np.where(in_sum, dm, 0.0), np.where(in_sum, 0.0, dm), discs.dm, models)
         notes = [*note, host_said, *disc_notes(ground.haloes, crossing, discs)]
         ends = Ends(*milky_way, host)
         ledgers.append(_one_model(ground, gas, sightline, ends, crossing, held, outside, notes, keep_draws))
@@ -195,13 +203,21 @@ def _host_guess(bursts: Bursts, i: int, universe: Universe) -> tuple[np.ndarray,
 
 
 def _cross(ground: Ground, i: int, sightline: Sightline, index: np.ndarray, relation) -> Crossing:
-    nobody = np.zeros(len(index), bool)
-    crossing = cross(sightline, ground.haloes, index, nobody, relation, ground.universe, ground.cosmos)
-    typical = np.median(crossing.log_m200c, axis=1)
-    inside = holds_burst(ground.bursts, i, ground.haloes, index, typical, ground.cosmos)
-    if not inside.any():
-        return crossing
-    return cross(sightline, ground.haloes, index, inside, relation, ground.universe, ground.cosmos)
+    """The haloes that the line meets in any draw, and the burst placed inside those it may sit in."""
+    parts = []
+    for start in range(0, max(len(index), 1), AT_ONCE):
+        part = cross(sightline, ground.haloes, index[start : start + AT_ONCE], relation, ground.universe, ground.cosmos)
+        parts.append(part.rows(np.flatnonzero(_met(part, ground.widest_r200c))))
+    crossing = join(parts)
+    typical = np.median(crossing.log_m200c, axis=1) if len(crossing.index) else np.zeros(0)
+    p_inside = p_holds_burst(ground.bursts, i, ground.haloes, crossing.index, typical, ground.cosmos)
+    return with_burst_inside(crossing, p_inside, sightline, ground.haloes, ground.universe)
+
+
+def _met(crossing: Crossing, widest_r200c: float) -> np.ndarray:
+    """Haloes whose gas, or whose galaxy's disc, the line may meet in some draw (n_haloes,) bool."""
+    gas = crossing.own & (crossing.impact_r200c < widest_r200c)
+    return (gas | (crossing.impact_kpc < DISC_KPC)).any(axis=1)
 
 
 def _halo_gas(ground: Ground, model: Model, crossing: Crossing, crossing_for) -> tuple[np.ndarray, list[Model]]:
@@ -228,14 +244,14 @@ def _one_model(
     note: list[str],
     keep_draws: bool,
 ) -> Ledger:
-    ids, dm, in_sum = ground.haloes.id[crossing.index], held.dm, held.in_sum
-    crossed = dm[in_sum] > 0
+    ids, dm = ground.haloes.id[crossing.index], held.dm
+    crossed = held.foreground > 0
     reach = reach_bounds(float(np.median(sightline.z)), gas.census, ground.deepest, outside)
     terms = budget(
         sightline,
         ends,
-        dm[in_sum].sum(axis=0),
-        dm[~in_sum].sum(axis=0),
+        held.foreground.sum(axis=0),
+        held.at_source.sum(axis=0),
         held.disc.sum(axis=0),
         gas.census,
         gas.census_factor,

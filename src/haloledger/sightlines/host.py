@@ -62,29 +62,49 @@ def with_unknown_hosts(bursts: Bursts, catalogues: Sequence) -> Bursts:
     return replace(bursts, note=note, host=host)
 
 
-def holds_burst(
+def p_holds_burst(
     bursts: Bursts, i: int, haloes: Haloes, index: np.ndarray, log_m200c: np.ndarray, cosmos: Cosmos
 ) -> np.ndarray:
-    """Haloes of `index` in whose projected phase space burst i lies; (n_index,) bool.
+    """Chance that burst i sits in each halo of `index`, (n_index,).
 
-    Inside r200c on the sky and within 3 sigma_v of the redshift. log_m200c (n_index,): a typical mass of each.
+    The group that lists the host is certain, and then no other. Else, inside r200c on the sky, galaxies follow matter:
+
+        p / (1 - p) = delta x 2 sqrt(r200c^2 - R^2) H(z) / c x N(dv | sigma_v and errors)
+
+    the density inside the halo against the mean density along the line in the Hubble flow, as for members of groups.
+    log_m200c (n_index,): a typical mass of each.
     """
     z = bursts.z[i]
     if np.isnan(z):
-        return np.zeros(len(index), bool)
+        return np.zeros(len(index))
+    listed = _lists_host(str(bursts.host[i]), haloes, index)
+    if listed.any():
+        return listed.astype(float)
     z_halo = point_redshift(haloes, cosmos)[index]
     # a velocity is compared with the listed redshift where there is one, since it is what both share
     z_listed = np.where(np.isfinite(haloes.z[index]), haloes.z[index], z_halo)
     angle = separation_deg(haloes.ra_deg[index], haloes.dec_deg[index], bursts.ra_deg[i], bursts.dec_deg[i])
     impact_kpc = cosmos.angular_distance_kpc(z_halo) * np.sin(np.radians(np.minimum(angle, 90.0)))
     sigma_kms = 10 ** load_relation("evrard2008").mean(log_m200c, z_halo, cosmos)
-    error = np.sqrt(haloes.z_err[index] ** 2 + np.nan_to_num(bursts.z_err[i]) ** 2)
-    allowed = 3 * np.sqrt((sigma_kms / LIGHT_KMS * (1 + z)) ** 2 + error**2)
-    sharp = (error <= WIDEST_Z_ERR * (1 + z)) & ~(haloes.photometric[index] & (haloes.kind[index] == "galaxy"))
-    near = impact_kpc <= cosmos.r200c_kpc(log_m200c, z_halo)
+    error_z = np.sqrt(haloes.z_err[index] ** 2 + np.nan_to_num(bursts.z_err[i]) ** 2)
+    error_kms = np.hypot(sigma_kms, error_z * LIGHT_KMS / (1 + z))
+    apart_kms = (z - z_listed) * LIGHT_KMS / (1 + z_listed)
+    chord_kpc = 2 * np.sqrt(np.maximum(cosmos.r200c_kpc(log_m200c, z_halo) ** 2 - impact_kpc**2, 0.0))
+    hubble_kms = 0.1 * cosmos.h * cosmos.e_of_z(z_halo) * chord_kpc
+    per_kms = np.exp(-0.5 * (apart_kms / error_kms) ** 2) / (np.sqrt(2 * np.pi) * error_kms)
+    odds = 200 / cosmos.omega_m_z(z_halo) * hubble_kms * per_kms
+    sharp = (error_z <= WIDEST_Z_ERR * (1 + z)) & ~(haloes.photometric[index] & (haloes.kind[index] == "galaxy"))
     # where distances rule, a burst far behind in the Hubble flow is not inside, whatever the velocities say
     flow = ~by_distance(haloes)[index] | (np.abs(z - z_halo) <= 3 * (sigma_kms + PECULIAR_KMS) / LIGHT_KMS)
-    return near & sharp & flow & (np.abs(z - z_listed) <= allowed)
+    odds = np.where(sharp & flow, odds, 0.0)
+    return odds / (1 + odds.sum())
+
+
+def _lists_host(host: str, haloes: Haloes, index: np.ndarray) -> np.ndarray:
+    """Groups of `index` among whose members the named host is, (n_index,) bool."""
+    if not host:
+        return np.zeros(len(index), dtype=bool)
+    return np.array([host in _names(text) for text in haloes.members[index]], dtype=bool)
 
 
 def _names(rows: str) -> set[str]:
