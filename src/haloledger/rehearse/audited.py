@@ -27,7 +27,7 @@ class Audited:
     at_source: np.ndarray  # mean DM at the source (n_lines,)
     entry_line: np.ndarray
     entry_row: np.ndarray  # catalogue row that stands for the halo
-    entry_front: np.ndarray  # mean DM in the foreground sum
+    entry_mean: np.ndarray  # mean DM, in the foreground sum or at the source
     haloes: Haloes
 
 
@@ -42,7 +42,7 @@ def run_audit(
     ground = prepare(bursts, haloes, [load_model(model)], [], universe, cosmos, None)
     n = len(bursts)
     sums, at_source = np.empty((n, draws), dtype=np.float32), np.empty(n)
-    line, row, front = [], [], []
+    line, row, mean = [], [], []
     for i in range(n):
         tell(i, n, "sightlines")
         (ledger,) = make_ledger(ground, i, keep_draws=True)
@@ -50,8 +50,8 @@ def run_audit(
         sums[i] = ledger.terms["dm_foreground"]
         at_source[i] = ledger.terms["dm_at_source"].mean()
         for entry in ledger.entries:
-            if entry.get("variance_share") is not None and entry["halo"] != "shared":  # None: at the source
+            if entry["halo"] != "shared":
                 line.append(i)
                 row.append(entry["halo"])
-                front.append(entry["dm_mean"])
-    return Audited(sums, at_source, np.array(line, dtype=int), np.array(row), np.array(front), haloes)
+                mean.append(entry["dm_mean"])
+    return Audited(sums, at_source, np.array(line, dtype=int), np.array(row), np.array(mean), haloes)
