@@ -2,10 +2,13 @@
 
 from __future__ import annotations
 
+import logging
 import sys
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
+from os import PathLike
 from types import ModuleType
+from typing import Any
 
 from haloledger.catalogs import read_bursts, read_footprint, read_galaxies, read_groups
 from haloledger.catalogs.by_hand import ByHand, apply_overrides
@@ -30,6 +33,7 @@ from haloledger.sightlines.local import uncovered, with_local
 from haloledger.sightlines.members import with_member_discs
 
 Progress = Callable[[int, int, str], None]
+LOG = logging.getLogger("haloledger")
 
 
 class Ledgers(LedgerTables):
@@ -46,6 +50,10 @@ class Ledgers(LedgerTables):
         from haloledger.report.figures import sightline_figure
 
         return sightline_figure(self, burst, model or self.models[0].name)
+
+    def __repr__(self) -> str:
+        models = ", ".join(m.name for m in self.models)
+        return f"Ledgers of {len(self.bursts)} bursts, {len(self.entries)} entries, models {models}"
 
     def _repr_html_(self) -> str:
         from haloledger.report.notebook import html
@@ -79,6 +87,7 @@ def audit(
     overrides=None,
     local: bool = True,
     source_in_sum: bool = False,
+    combine: str = "weighted",
     keep_draws: bool = False,
     progress: Progress | None = None,
 ) -> Ledgers:
@@ -92,78 +101,102 @@ def audit(
     overrides  changes by hand: a TOML file, or a list of dictionaries with its keys
     local      the nearest large haloes from the built-in table, where no catalogue given covers them
     source_in_sum  haloes that the burst sits in count in the foreground sum
+    combine    masses of one halo from several catalogues: "weighted" by their errors, or by "precedence"
     progress   called with (done, total, what)
     Raises InputError, with what to do next, before any work where the input cannot be used.
     """
-    _check_numbers(draws, seed, models)
-    tell = progress or (lambda done, total, what: None)
-    gas = [load_model(m) for m in models]
-    universe = Universe(seed=seed, n_draws=draws, fixed=fixed, held=checked(hold or {}))
-    cosmos = named_cosmology(cosmology)
-    electrons = electron_model(disc)
-    tell(0, 1, "reading")
-    inputs = _read(bursts, galaxies, groups, footprints, overrides)
-    own_models = {m: load_model(m) for m in inputs.overrides.models}
-    tell(0, 1, "one list of haloes")
-    hand = apply_overrides(
-        inputs.overrides,
-        inputs.bursts,
-        inputs.galaxies,
-        [*([local_groups()] if local else []), *inputs.groups],
-        cosmos.luminosity_distance_mpc,
-    )
-    haloes = _haloes(hand, local, cosmos)
-    tell(0, 1, "tables of the halo models")
-    sightlines = with_unknown_hosts(hand.bursts, [*hand.galaxies, *hand.groups])
-    own_gas = gas_by_hand(haloes, hand.rows, own_models)
-    haloes = with_member_discs(haloes, sightlines, hand.galaxies, cosmos)
-    footprints_read = inputs.footprints
-    ground = prepare(sightlines, haloes, gas, footprints_read, universe, cosmos, electrons, source_in_sum, own_gas)
-    ledgers = _all_ledgers(ground, tell, keep_draws)
-    options = {
-        "models": [str(m) for m in models],
-        "draws": universe.n_draws,
+    options: dict[str, Any] = {
+        "models": [str(m) for m in _several(models)],
+        "draws": 1 if fixed else draws,
         "seed": seed,
         "cosmology": cosmology,
         "fixed": fixed,
-        "hold": dict(universe.held),
+        "hold": checked(hold or {}),
         "disc": disc,
         "local": local,
         "source_in_sum": source_in_sum,
+        "combine": combine,
     }
-    given = {"bursts": [bursts], "galaxies": galaxies, "groups": groups, "footprints": footprints}
-    given["overrides"] = [] if overrides is None else [overrides]
-    run = run_record(options, given, [*gas, *(m for m in own_models.values() if m not in gas)])
-    return _gather(ledgers, inputs, hand, haloes, gas, run | ({"by_hand": hand.record} if hand.record else {}))
+    given: dict[str, list] = {
+        "bursts": [bursts],
+        "galaxies": _several(galaxies),
+        "groups": _several(groups),
+        "footprints": _several(footprints),
+        "overrides": [] if overrides is None else [overrides],
+    }
+    _check_numbers(draws, seed)
+    tell = progress or (lambda done, total, what: None)
+    gas, cosmos, electrons = _models(options["models"]), named_cosmology(cosmology), electron_model(disc)
+    universe = Universe(seed=seed, n_draws=draws, fixed=fixed, held=options["hold"])
+    tell(0, 1, "reading")
+    inputs = _read(given)
+    own_models = {m: load_model(m) for m in inputs.overrides.models}
+    tell(0, 1, "one list of haloes")
+    hand = _by_hand(inputs, local, cosmos)
+    sightlines = with_unknown_hosts(hand.bursts, [*hand.galaxies, *hand.groups])
+    listed = _haloes(hand, local, combine, cosmos)
+    haloes = with_member_discs(listed, sightlines, hand.galaxies, cosmos)
+    LOG.info("%d haloes listed", len(listed))
+    tell(0, 1, "tables of the halo models")
+    own_gas = gas_by_hand(haloes, hand.rows, own_models)
+    ground = prepare(sightlines, haloes, gas, inputs.footprints, universe, cosmos, electrons, source_in_sum, own_gas)
+    LOG.info("%d pairs of sightline and near halo", sum(map(len, ground.near)))
+    ledgers = _all_ledgers(ground, tell, keep_draws)
+    run = run_record(options, given, [*gas, *(m for m in own_models.values() if m not in gas)], hand.record)
+    return _gather(ledgers, inputs, hand, listed, gas, run)
 
 
-def _check_numbers(draws: int, seed: int, models: Sequence[str]) -> None:
-    if draws < 1:
-        raise InputError(f"--draws {draws}: at least one universe is needed. Write 1000, or use --fixed.")
-    if seed < 0:
-        raise InputError(f"--seed {seed}: seeds are whole numbers from 0 up. Write 1.")
-    if not models:
+def _several(given) -> list:
+    """What was given as a list: one file, one table or one name alone counts as one."""
+    if isinstance(given, str | PathLike) or hasattr(given, "columns"):
+        return [given]
+    return list(given)
+
+
+def _models(names: list[str]) -> list[Model]:
+    if not names:
         raise InputError("no halo model given. Write at least one --model, for instance --model blended.")
+    models = [load_model(name) for name in names]
+    for i, model in enumerate(models):
+        if model.name in [other.name for other in models[:i]]:
+            raise InputError(
+                f"--model: '{model.name}' is given twice ({names[i]}). Leave one out, or give the file another `name`."
+            )
+    return models
 
 
-def _haloes(hand: ByHand, local: bool, cosmos: Cosmos) -> Haloes:
+def _by_hand(inputs: Inputs, local: bool, cosmos: Cosmos) -> ByHand:
+    """The tables with the changes by hand made; the built-in nearest haloes, if wanted, are the first group table."""
+    nearest = [local_groups()] if local else []
+    groups = [*nearest, *inputs.groups]
+    return apply_overrides(inputs.overrides, inputs.bursts, inputs.galaxies, groups, cosmos.luminosity_distance_mpc)
+
+
+def _check_numbers(draws: int, seed: int) -> None:
+    if not isinstance(draws, int) or draws < 1:
+        raise InputError(f"--draws {draws}: at least one universe is needed. Write 1000, or use --fixed.")
+    if not isinstance(seed, int) or seed < 0:
+        raise InputError(f"--seed {seed}: seeds are whole numbers from 0 up. Write 1.")
+
+
+def _haloes(hand: ByHand, local: bool, combine: str, cosmos: Cosmos) -> Haloes:
     """One list of haloes from the catalogues and, where none covers them, the nearest ones."""
     if local:
         nearest, *groups = hand.groups
         nearest = uncovered(nearest, hand.galaxies, groups, cosmos)
-        haloes = with_local(hand.galaxies, groups, nearest, cosmos)
+        haloes = with_local(hand.galaxies, groups, nearest, cosmos, combine)
     else:
-        haloes = halo_list(hand.galaxies, hand.groups, cosmos)
+        haloes = halo_list(hand.galaxies, hand.groups, cosmos, combine=combine)
     return haloes_by_hand(haloes, hand.rows, cosmos)
 
 
-def _read(bursts, galaxies, groups, footprints, overrides) -> Inputs:
+def _read(given: dict[str, list]) -> Inputs:
     return Inputs(
-        bursts=read_bursts(bursts),
-        galaxies=[read_galaxies(g) for g in galaxies],
-        groups=[read_groups(g) for g in groups],
-        footprints=[read_footprint(f) for f in footprints],
-        overrides=read_overrides(overrides),
+        bursts=read_bursts(given["bursts"][0]),
+        galaxies=[read_galaxies(g) for g in given["galaxies"]],
+        groups=[read_groups(g) for g in given["groups"]],
+        footprints=[read_footprint(f) for f in given["footprints"]],
+        overrides=read_overrides(given["overrides"][0] if given["overrides"] else None),
     )
 
 

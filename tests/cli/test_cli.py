@@ -163,6 +163,7 @@ def test_options_reach_the_function(asked):
         "overrides": None,
         "local": True,
         "source_in_sum": False,
+        "combine": "weighted",
         "keep_draws": False,
     }
     run("audit", "b.csv", "--no-local", "--source-in-sum", "--overrides", "o.toml")

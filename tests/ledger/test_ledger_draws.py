@@ -200,11 +200,23 @@ def test_outside_the_footprint_reach_is_zero(tmp_path):
         ({"cosmology": "Planck99"}, "Planck18"),
         ({"disc": "ne1999"}, "Write one of plane"),
         ({"models": []}, "--model"),
+        ({"models": ["blended", "blended"]}, "given twice"),
+        ({"hold": {"kept": "-5"}}, "out of range"),
+        ({"draws": "many"}, "at least one universe"),
     ],
 )
 def test_bad_options_stop_before_any_work(options, message):
     with pytest.raises(InputError, match=message):
         audit(sky.bursts(sky.burst()), groups=[sky.Table(rows=[sky.group()])], **{"models": ["blended"], **options})
+
+
+def test_one_name_or_table_alone_counts_as_a_list():
+    line, group = sky.bursts(sky.burst()), sky.Table(rows=[sky.group()])
+    alone, listed = (
+        audit(line, groups=g, models=m, fixed=True) for g, m in ((group, "blended"), ([group], ["blended"]))
+    )
+    assert alone.to_pandas()[1].equals(listed.to_pandas()[1])
+    assert repr(alone).startswith("Ledgers of 1 bursts")
 
 
 def test_held_relation_and_mass_spread(planck):

@@ -73,6 +73,14 @@ def _more() -> dict[str, Section]:
     show_default=True,
     help="Milky Way disc where the table has no dm_disc.",
 )
+@option(
+    "--combine",
+    group=GAS,
+    type=click.Choice(["weighted", "precedence"]),
+    default="weighted",
+    show_default=True,
+    help="Masses of one halo from several catalogues: averaged by their errors, or the leading row's.",
+)
 @option("--source-in-sum", group=GAS, is_flag=True, help="Haloes the burst sits in count as foreground.")
 @option("--out", group=OUTPUT, metavar="DIR", help="Folder for the tables; without it, results go to the screen only.")
 @option(

@@ -10,6 +10,7 @@ NUISANCES = {
     "zero_point": "offset of measured stellar masses [dex]; drawn with 0.1",
     "hydrostatic_bias": "(1-b) of X-ray and SZ masses; drawn as the card says",
     "kept": "offset of the kept fraction of all haloes [dex]; drawn as the model says",
+    "membership": "0: a galaxy is in a listed halo or not, and no host beyond the lists is drawn",
     "mw_disc": "scale of the Milky Way disc; 1 leaves it as given",
     "mw_halo": "DM of the Milky Way halo [pc cm-3], or a law by name, where the table gives none",
     "host_rest": "rest-frame DM of every host [pc cm-3], where the table gives none",

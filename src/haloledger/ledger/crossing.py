@@ -132,7 +132,7 @@ def with_burst_inside(
     inside = (pick < upper) & (pick >= upper - p_inside[rows, None])
     names = [f"{sightline.burst}|{haloes.id[crossing.index[i]]}" for i in rows]
     at_source, behind_kpc = crossing.at_source.copy(), crossing.behind_kpc.copy()
-    for row, here, uniform in zip(rows, inside, universe.uniforms("depth", names), strict=True):
+    for row, here, uniform in zip(rows.tolist(), inside, universe.uniforms("depth", names), strict=True):
         at_source[row] = here
         behind_kpc[row] = np.where(
             here, _depth_r200c(crossing, row, uniform) * crossing.r200c_kpc[row], behind_kpc[row]

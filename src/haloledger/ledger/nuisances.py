@@ -14,11 +14,14 @@ NUISANCES = {
     "zero_point": "offset of measured stellar masses [dex]; drawn with 0.1",
     "hydrostatic_bias": "(1-b) of X-ray and SZ masses; drawn as the card says",
     "kept": "offset of the kept fraction of all haloes [dex]; drawn as the model says",
+    "membership": "0: a galaxy is in a listed halo or not, and no host beyond the lists is drawn",
     "mw_disc": "scale of the Milky Way disc; 1 leaves it as given",
     "mw_halo": "DM of the Milky Way halo [pc cm-3], or a law by name, where the table gives none",
     "host_rest": "rest-frame DM of every host [pc cm-3], where the table gives none",
 }
 POSITIVE = ("hydrostatic_bias", "mw_disc")
+LARGEST = {"kept": 1.0, "zero_point": 1.0, "membership": 0.0}
+"""Larger values, either sign, are mistakes: a fraction written for a dex."""
 
 
 def checked(hold: Mapping[str, object]) -> dict[str, str]:
@@ -42,7 +45,7 @@ def _checked_value(name: str, value: str) -> str:
     except ValueError:
         laws = f" Laws: {', '.join(mw_halo_laws())}." if name == "mw_halo" else ""
         raise InputError(f"--hold {name}={value}: not a number. It is the {NUISANCES[name]}.{laws}") from None
-    if not abs(number) < 1e6 or (name in POSITIVE and number <= 0):
+    if not abs(number) <= LARGEST.get(name, 1e6) or (name in POSITIVE and number <= 0):
         raise InputError(f"--hold {name}={value}: out of range. It is the {NUISANCES[name]}.")
     return value
 

@@ -217,7 +217,7 @@ def _cross(ground: Ground, i: int, sightline: Sightline, index: np.ndarray, rela
 def _met(crossing: Crossing, widest_r200c: float) -> np.ndarray:
     """Haloes whose gas, or whose galaxy's disc, the line may meet in some draw (n_haloes,) bool."""
     gas = crossing.own & (crossing.impact_r200c < widest_r200c)
-    return (gas | (crossing.impact_kpc < DISC_KPC)).any(axis=1)
+    return np.any(gas | (crossing.impact_kpc < DISC_KPC), axis=1)
 
 
 def _halo_gas(ground: Ground, model: Model, crossing: Crossing, crossing_for) -> tuple[np.ndarray, list[Model]]:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import hashlib
 import platform
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from importlib.metadata import PackageNotFoundError, version
 from pathlib import Path
 
@@ -13,14 +13,15 @@ from haloledger import __version__
 LIBRARIES = ("numpy", "scipy", "astropy", "colossus", "pandas", "pyarrow")
 
 
-def run_record(options: dict, inputs: dict[str, Sequence], models: list) -> dict:
+def run_record(options: dict, inputs: Mapping[str, Sequence], models: list, by_hand: list | None = None) -> dict:
     """Record as plain values for a TOML file.
 
     options  name -> value as given
     inputs   "bursts", "galaxies", ... -> what was given for each ("[CARD:]FILE" or a table in memory)
     models   the halo models used; their files' contents are written out
+    by_hand  changes made by hand, as plain values
     """
-    return {
+    record = {
         "haloledger": __version__,
         "python": platform.python_version(),
         "libraries": {name: _version(name) for name in LIBRARIES},
@@ -28,6 +29,7 @@ def run_record(options: dict, inputs: dict[str, Sequence], models: list) -> dict
         "inputs": [_input(kind, given) for kind, several in inputs.items() for given in several],
         "models": [m.stated() for m in models],
     }
+    return record | ({"by_hand": by_hand} if by_hand else {})
 
 
 def _input(kind: str, given) -> dict:
@@ -39,6 +41,7 @@ def _input(kind: str, given) -> dict:
         path = Path(text.split(":", 1)[1])
     record = {"kind": kind, "given": text}
     if path.is_file():
+        record["path"] = str(path.resolve())
         record["sha256"] = hashlib.sha256(path.read_bytes()).hexdigest()
     return record
 

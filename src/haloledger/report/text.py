@@ -22,6 +22,7 @@ HELD_UNIT = {
     "zero_point": "dex",
     "hydrostatic_bias": "1-b",
     "kept": "dex",
+    "membership": "0 is off",
     "mw_disc": "scale",
     "mw_halo": "pc cm-3",
     "host_rest": "pc cm-3, rest frame",

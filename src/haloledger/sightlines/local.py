@@ -41,15 +41,18 @@ def uncovered(local: Groups, galaxies: list[Galaxies], groups: list[Groups], cos
     return take(local, ~np.isin(local.row, sorted(names)))
 
 
-def with_local(galaxies: list[Galaxies], groups: list[Groups], local: Groups, cosmos: Cosmos) -> Haloes:
+def with_local(
+    galaxies: list[Galaxies], groups: list[Groups], local: Groups, cosmos: Cosmos, combine: str = "weighted"
+) -> Haloes:
     """One list of haloes, those of the built-in table `local` among them as kind `local`.
 
     A satellite inside the Milky Way keeps its place in the list, for its disc, but has no gas halo of its own.
+    combine  as in `halo_list`
     """
     known = {halo.row: halo for halo in local_volume()}
     inner = np.array([known[str(r)].p_satellite >= 1 for r in local.row], dtype=bool)
     outer = take(local, ~inner)
-    haloes = halo_list(galaxies, [*groups, outer] if len(outer) else groups, cosmos)
+    haloes = halo_list(galaxies, [*groups, outer] if len(outer) else groups, cosmos, combine=combine)
     if inner.any():
         haloes = join([haloes, group_haloes(take(local, inner), int(haloes.catalogue.max(initial=0)) + 1, cosmos)])
         haloes = rows(haloes, np.argsort(haloes.id.astype(str), kind="stable"))
