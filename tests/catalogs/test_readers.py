@@ -265,11 +265,6 @@ def test_ways_to_write_the_unit_of_a_logarithm(tmp_path, unit):
     assert read_galaxies(path).log_mstar[0] == 10.5
 
 
-def test_a_localisation_under_another_name_is_noticed():
-    got = read_bursts(Table({**BURSTS, "pos_major": [1.0, 2.0, 3.0]}))
-    assert got.notes == ("bursts: column 'pos_major' is not used. Did you mean 'loc_major_arcsec'?",)
-
-
 def test_windows_lines_quotes_and_a_byte_order_mark(tmp_path):
     path = tmp_path / "g.csv"
     path.write_bytes('\ufeffid,ra,dec,z\r\n"A, 1",1,2,0.1\r\n"say ""b""",3,4,0.2\r\n'.encode())

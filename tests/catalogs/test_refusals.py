@@ -219,3 +219,25 @@ def test_folder_and_wrong_object(tmp_path):
         read_galaxies(tmp_path)
     with pytest.raises(InputError, match=r"found a int\. Give a path"):
         read_galaxies(3)
+
+
+@pytest.mark.parametrize(
+    ("header", "message"),
+    [
+        ("log_mass [Msun/h]", "It carries h: take log10 of the mass divided by h"),
+        ("mass", "Take its log10 and name it 'log_mass'"),
+        ("logmass", "Rename it"),
+    ],
+)
+def test_a_mass_under_another_name_is_told_what_to_do(tmp_path, header, message):
+    path = tmp_path / "groups.csv"
+    path.write_text(f"id,ra,dec,z,{header},mass_def\nA,1,2,0.1,14.2,200c\n", encoding="utf-8")
+    with pytest.raises(InputError, match=message):
+        read_groups(str(path))
+
+
+def test_a_misspelt_burst_column_stops_the_run(tmp_path):
+    path = tmp_path / "bursts.csv"
+    path.write_text("burst,ra,dec,z,dm,pos_major\nA,1,2,0.1,140,600\n", encoding="utf-8")
+    with pytest.raises(InputError, match="'pos_major' is not one of ours. Did you mean 'loc_major_arcsec'"):
+        read_bursts(str(path))

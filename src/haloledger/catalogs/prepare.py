@@ -100,7 +100,7 @@ def _match_names(raw: RawTable, kind: str) -> dict[str, str]:
 def _lacks(raw: RawTable, kind: str, ours: str, spec: Field, found: dict[str, str]) -> str:
     free = [c for c in raw.columns if c not in found.values()]
     alike = near(ours, free, 0.5) or near(spec.what.split(",")[0], free, 0.7)
-    hint = f" Did you mean '{alike}'? Rename it, or read the file through a card (CARD:FILE)." if alike else ""
+    hint = f" Did you mean '{alike}'? {_renaming(alike, ours, spec)}" if alike else ""
     shown = ", ".join(list(raw.columns)[:15]) + (" ..." if len(raw.columns) > 15 else "")
     if ours == "mass_def":
         return (
@@ -114,6 +114,17 @@ def _lacks(raw: RawTable, kind: str, ours: str, spec: Field, found: dict[str, st
 _MASS_WORD = r"(ass|_?star|_?stellar|_?halo|_?vir|_?(200|500|180)[cm]?)"
 _H_WORD = r"(_?/h|_?h-1|_?hinv|_h(_?-?1|70|100|inv)?|_over_h|_per_h|_littleh)"
 _H_NAME = re.compile(rf"^(log(10)?_?m{_MASS_WORD}?|(halo_|stellar_)?m{_MASS_WORD}){_H_WORD}$", re.I)
+
+
+def _renaming(native: str, ours: str, spec: Field) -> str:
+    """What to do with a column of another name: renaming alone would keep an h, or a mass that is not a logarithm."""
+    if re.search(r"/\s*h|h\s*\^?-1|_h\b", native):
+        return (
+            f"It carries h: take log10 of the mass divided by h and name it '{ours}', or read the file through a card."
+        )
+    if spec.log and "log" not in native.lower():
+        return f"Take its log10 and name it '{ours}', or read the file through a card (CARD:FILE)."
+    return "Rename it, or read the file through a card (CARD:FILE)."
 
 
 def _refuse_h_names(raw: RawTable, kind: str, found: dict[str, str]) -> None:
@@ -138,6 +149,10 @@ def _unknown_names(raw: RawTable, kind: str, found: dict[str, str]) -> list[str]
     for native in raw.columns:
         if native not in found.values() and native not in density:
             alike = near(native, free, 0.8) or _shares_word(native, free)
+            if alike and kind == "bursts":  # a lost localisation or error would change every number, unseen
+                raise InputError(
+                    f"{raw.file}: column '{native}' is not one of ours. Did you mean '{alike}'? Rename it or leave it out."
+                )
             if alike:
                 notes.append(f"{raw.label}: column '{native}' is not used. Did you mean '{alike}'?")
     return notes

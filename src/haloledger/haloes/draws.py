@@ -59,9 +59,11 @@ def relation_notes(haloes: Haloes, index, universe: Universe) -> list[str]:
     proxies = [(name, part.relation == name) for name in sorted(set(part.relation.tolist()) - {""})]
     for name, uses in stellar + proxies:
         low, high = load_relation(name).z_range
-        beyond = int(np.sum(uses & ((part.z < low - part.z_err) | (part.z > high + part.z_err))))
+        z = np.maximum(part.z, 0.0)  # a velocity towards us is no redshift
+        beyond = int(np.sum(uses & ((z < low - part.z_err) | (z > high + part.z_err))))
         if beyond:
-            notes.append(f"{name} is used beyond its redshifts ({low:g} to {high:g}) for {beyond} haloes.")
+            many = "halo" if beyond == 1 else "haloes"
+            notes.append(f"{name} is used beyond its redshifts ({low:g} to {high:g}) for {beyond} {many}")
     return notes
 
 

@@ -8,6 +8,7 @@ import numpy as np
 
 from haloledger.catalogs.canonical import Galaxies, Groups
 from haloledger.cosmos.background import Cosmos
+from haloledger.errors import InputError
 from haloledger.haloes.distances import point_luminosity_distance_mpc, point_redshift
 from haloledger.haloes.relations import load_relation
 from haloledger.haloes.stellar_mass import StellarMasses, stellar_masses
@@ -167,5 +168,10 @@ def _with_mass(haloes: Haloes, label: str, wanted: str) -> Haloes:
     lost = len(haloes) - len(kept)
     if not lost:
         return kept
+    if not len(kept):
+        raise InputError(
+            f"{label}: none of its {lost} rows can be used. A row needs {wanted}, and a distance. Look for misspelt"
+            " column names and for masses that are not log10."
+        )
     note = f"{label}: {lost} of {len(haloes)} rows left out: no usable mass. A row needs {wanted}, and a distance."
     return Haloes(**{**vars(kept), "notes": (note,)})
