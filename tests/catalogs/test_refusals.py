@@ -239,5 +239,5 @@ def test_a_mass_under_another_name_is_told_what_to_do(tmp_path, header, message)
 def test_a_misspelt_burst_column_stops_the_run(tmp_path):
     path = tmp_path / "bursts.csv"
     path.write_text("burst,ra,dec,z,dm,pos_major\nA,1,2,0.1,140,600\n", encoding="utf-8")
-    with pytest.raises(InputError, match="'pos_major' is not one of ours. Did you mean 'loc_major_arcsec'"):
+    with pytest.raises(InputError, match=r"'pos_major' is not one of ours\. Did you mean 'loc_major_arcsec'"):
         read_bursts(str(path))

@@ -151,7 +151,8 @@ def _unknown_names(raw: RawTable, kind: str, found: dict[str, str]) -> list[str]
             alike = near(native, free, 0.8) or _shares_word(native, free)
             if alike and kind == "bursts":  # a lost localisation or error would change every number, unseen
                 raise InputError(
-                    f"{raw.file}: column '{native}' is not one of ours. Did you mean '{alike}'? Rename it or leave it out."
+                    f"{raw.file}: column '{native}' is not one of ours. Did you mean '{alike}'?"
+                    " Rename it, or leave it out."
                 )
             if alike:
                 notes.append(f"{raw.label}: column '{native}' is not used. Did you mean '{alike}'?")
