@@ -283,7 +283,9 @@ def _one_model(
 def _model_notes(gas: GasGround, sightline: Sightline) -> list[str]:
     notes = []
     if np.isfinite(sightline.z_given) and gas.width.floored_at(sightline.z_given):
-        notes.append("haloes of this model alone scatter more than the named total: diffuse scatter at its floor")
+        notes.append(
+            "haloes of this model alone spread as widely as the published total, so the diffuse term gets its least"
+        )
     return notes
 
 

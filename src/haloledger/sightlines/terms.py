@@ -33,18 +33,22 @@ def mw_disc(
     if np.isfinite(given):
         law = defaults()["mw_disc_given"]
         width = error if np.isfinite(error) else max(law["scatter"] * given, min(law["least"], given))
-        return _log_normal(given, _dex(width / max(given, 1e-9)), "mw_disc", universe), "disc from the table"
+        return _log_normal(
+            given, _dex(width / max(given, 1e-9)), "mw_disc", universe
+        ), "Milky Way disc from the table of bursts"
     l_deg, b_deg = galactic(bursts.ra_deg[i], bursts.dec_deg[i])
     if electron_model is not None:
         law = defaults()["mw_disc_given"]
         value = electron_model(l_deg, b_deg)
         width = max(law["scatter"] * value, min(law["least"], value))
-        return _log_normal(value, _dex(width / value), "mw_disc", universe), "disc from a published electron model"
+        return _log_normal(
+            value, _dex(width / value), "mw_disc", universe
+        ), "Milky Way disc from a published electron model"
     law = defaults()["mw_disc_plane"]
     sine = np.sin(np.radians(max(abs(b_deg), law["floor_latitude_deg"])))
     low = abs(b_deg) < law["least_latitude_deg"]
     dex = law["scatter_dex_low"] if low else law["scatter_dex"]
-    said = "disc from the plane-parallel fallback"
+    said = "Milky Way disc from the plane-parallel fallback"
     if low:
         said += f", which can be off by a factor two at latitude {b_deg:.1f} deg: give dm_disc"
     return _log_normal(law["pole"] / sine, dex, "mw_disc", universe), said
