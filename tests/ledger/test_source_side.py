@@ -108,3 +108,26 @@ def test_a_host_that_is_named_and_listed_decides_alone(planck):
     table = sky.bursts(sky.burst(z=0.3, host_id="HOST"))
     ledgers = audit(table, galaxies=[sky.galaxies(named, beside)], models=["blended"], draws=32)
     assert "galaxies:NEAR" in [str(h) for h in ledgers.entries["halo"]]
+
+
+def test_members_of_the_burst_s_group_do_not_take_the_burst_from_it():
+    # six satellites around the burst: in draws where they have no halo of their own, the burst cannot sit in theirs
+    rng = np.random.default_rng(3)
+    places = rng.normal(0, 0.01, (6, 2))
+    rows = [
+        {**sky.member_host(f"S{i}", "", z=0.1003), "ra": sky.HERE[0] + p[0], "dec": sky.HERE[1] + p[1]}
+        for i, p in enumerate(places)
+    ]
+    for row in rows:
+        del row["group_id"]
+    group = sky.Table(rows=[sky.group(z=0.1, log_mass=14.3, dec=sky.HERE[1] + 0.01)])
+    ledgers = audit(
+        sky.bursts(sky.burst(z=0.1)),
+        galaxies=[sky.Table(rows=rows)],
+        groups=[group],
+        models=[WIDE],
+        draws=1000,
+        keep_draws=True,
+    )
+    # odds 200 / Om(z) x H chord x N(0) = 100: the group holds the burst in 99% of draws
+    assert (ledgers.draws.dm_at_source > 0).mean() > 0.95

@@ -12,6 +12,7 @@ PECULIAR_KMS = 300.0  # common practice for the field, one dimension
 NEARBY_MPC = 50.0
 DISTANCE_ERROR = 0.2  # share of the distance where a catalogue gives none: 0.4 mag in the modulus, common practice
 LOWEST_OUTLIER = 0.4  # share of the listed redshift down to which outliers are searched
+LARGEST_ERROR = 0.5  # of the distance: a velocity tells it better than a larger error; ours
 LOWEST_SHARE = 0.3  # no draw and no search goes below this share of the listed redshift
 MIN_Z = 1e-4
 
@@ -41,9 +42,12 @@ def point_redshift(haloes, cosmos: Cosmos) -> np.ndarray:
 
 
 def distance_error_share(haloes) -> np.ndarray:
-    """Error of the measured distance over the distance, 20 per cent where it is not given."""
+    """Error of the measured distance over the distance, 20 per cent where it is not given, at most LARGEST_ERROR.
+
+    Draws are log-normal: an error as large as the distance would put the object next to us in a share of them.
+    """
     share = haloes.distance_err_mpc / haloes.distance_mpc
-    return np.where(np.isfinite(share), share, DISTANCE_ERROR)
+    return np.minimum(np.where(np.isfinite(share), share, DISTANCE_ERROR), LARGEST_ERROR)
 
 
 def point_luminosity_distance_mpc(haloes, cosmos: Cosmos) -> np.ndarray:

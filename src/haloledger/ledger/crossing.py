@@ -117,19 +117,21 @@ def _concentration(draws: HaloDraws, relation: str | float, cosmos: Cosmos) -> n
 
 
 def with_burst_inside(
-    crossing: Crossing, p_inside: np.ndarray, sightline: Sightline, haloes: Haloes, universe: Universe
+    crossing: Crossing, odds: np.ndarray, sightline: Sightline, haloes: Haloes, universe: Universe
 ) -> Crossing:
-    """The crossing with the burst inside each halo in a share `p_inside` (n_haloes,) of the draws, in one at most.
+    """The crossing with the burst inside one halo at most in each draw, by the odds (n_haloes,) of those that draw has.
 
     Its depth there is drawn from an NFW density along the line, out to two r200c: a velocity difference says nothing
     about the order along the line inside one halo.
     """
-    rows = np.flatnonzero(p_inside > 0)
+    rows = np.flatnonzero(odds > 0)
     if not rows.size:
         return crossing
     pick = universe.uniforms("inside", [sightline.burst])[0]
-    upper = np.cumsum(p_inside[rows])[:, None]
-    inside = (pick < upper) & (pick >= upper - p_inside[rows, None])
+    weight = odds[rows, None] * crossing.own[rows]  # a satellite's place has no halo to sit in
+    upper = np.cumsum(weight, axis=0)
+    whole = 1 + upper[-1]
+    inside = (pick < upper / whole) & (pick >= (upper - weight) / whole)
     names = [f"{sightline.burst}|{haloes.id[crossing.index[i]]}" for i in rows]
     at_source, behind_kpc = crossing.at_source.copy(), crossing.behind_kpc.copy()
     for row, here, uniform in zip(rows.tolist(), inside, universe.uniforms("depth", names), strict=True):

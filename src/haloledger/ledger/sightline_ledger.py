@@ -29,7 +29,7 @@ from haloledger.reach.census import Census, take_census
 from haloledger.reach.coverage import deepest_by_mass, place, reach_bounds
 from haloledger.reach.diffuse import DiffuseWidth, solve_width
 from haloledger.sightlines.draws import Sightline, directions, given_redshift, observed_dm
-from haloledger.sightlines.host import is_host, p_holds_burst
+from haloledger.sightlines.host import is_host, odds_of_holding
 from haloledger.sightlines.near import near_pairs
 from haloledger.sightlines.redshift import redshift_from_dm
 from haloledger.sightlines.terms import host_obs, host_rest, mw_disc, mw_halo
@@ -210,8 +210,8 @@ def _cross(ground: Ground, i: int, sightline: Sightline, index: np.ndarray, rela
         parts.append(part.rows(np.flatnonzero(_met(part, ground.widest_r200c))))
     crossing = join(parts)
     typical = np.median(crossing.log_m200c, axis=1) if len(crossing.index) else np.zeros(0)
-    p_inside = p_holds_burst(ground.bursts, i, ground.haloes, crossing.index, typical, ground.cosmos)
-    return with_burst_inside(crossing, p_inside, sightline, ground.haloes, ground.universe)
+    odds = odds_of_holding(ground.bursts, i, ground.haloes, crossing.index, typical, ground.cosmos)
+    return with_burst_inside(crossing, odds, sightline, ground.haloes, ground.universe)
 
 
 def _met(crossing: Crossing, widest_r200c: float) -> np.ndarray:

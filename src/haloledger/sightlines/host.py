@@ -20,6 +20,8 @@ LEAST_KPC = 15.0
 """The nearest galaxy this close to a burst, at its redshift, is taken as the host."""
 WIDEST_ARCSEC = 20.0
 """A poor localisation does not turn every galaxy inside it into the host."""
+CERTAIN = 1e12
+"""Odds of what a catalogue says itself."""
 WIDEST_Z_ERR = 0.012
 """A group with a larger redshift error, over 1 + z, cannot be said to hold the burst."""
 
@@ -62,14 +64,14 @@ def with_unknown_hosts(bursts: Bursts, catalogues: Sequence) -> Bursts:
     return replace(bursts, note=note, host=host)
 
 
-def p_holds_burst(
+def odds_of_holding(
     bursts: Bursts, i: int, haloes: Haloes, index: np.ndarray, log_m200c: np.ndarray, cosmos: Cosmos
 ) -> np.ndarray:
-    """Chance that burst i sits in each halo of `index`, (n_index,).
+    """Odds that burst i sits in each halo of `index` against its being in none, (n_index,).
 
     The group that lists the host is certain, and then no other. Else, inside r200c on the sky, galaxies follow matter:
 
-        p / (1 - p) = delta x 2 sqrt(r200c^2 - R^2) H(z) / c x N(dv | sigma_v and errors)
+        odds = delta x 2 sqrt(r200c^2 - R^2) H(z) / c x N(dv | sigma_v and errors)
 
     the density inside the halo against the mean density along the line in the Hubble flow, as for members of groups.
     log_m200c (n_index,): a typical mass of each.
@@ -79,7 +81,7 @@ def p_holds_burst(
         return np.zeros(len(index))
     listed = _lists_host(str(bursts.host[i]), haloes, index)
     if listed.any():
-        return listed.astype(float)
+        return np.where(listed, CERTAIN, 0.0)
     z_halo = point_redshift(haloes, cosmos)[index]
     # a velocity is compared with the listed redshift where there is one, since it is what both share
     z_listed = np.where(np.isfinite(haloes.z[index]), haloes.z[index], z_halo)
@@ -96,8 +98,7 @@ def p_holds_burst(
     sharp = (error_z <= WIDEST_Z_ERR * (1 + z)) & ~(haloes.photometric[index] & (haloes.kind[index] == "galaxy"))
     # where distances rule, a burst far behind in the Hubble flow is not inside, whatever the velocities say
     flow = ~by_distance(haloes)[index] | (np.abs(z - z_halo) <= 3 * (sigma_kms + PECULIAR_KMS) / LIGHT_KMS)
-    odds = np.where(sharp & flow, odds, 0.0)
-    return odds / (1 + odds.sum())
+    return np.where(sharp & flow, odds, 0.0)
 
 
 def _lists_host(host: str, haloes: Haloes, index: np.ndarray) -> np.ndarray:
