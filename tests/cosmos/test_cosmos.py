@@ -197,6 +197,13 @@ def test_unknown_concentration_and_definition_say_what_to_write(planck):
         from_200c(12.0, "200x", 0.0, 5.0, planck)
 
 
+def test_another_cosmology_brings_its_own_spectrum():
+    # WMAP9 as astropy states it: sigma8 = 0.82, n_s = 0.9608 (Hinshaw et al. 2013, ApJS 208, 19)
+    wmap = cosmology("WMAP9")
+    assert (wmap.sigma8, wmap.n_s) == pytest.approx((0.82, 0.9608))
+    assert mass_function(14.0, 0.0, wmap) != pytest.approx(mass_function(14.0, 0.0, cosmology("Planck18")), rel=0.02)
+
+
 def test_unknown_cosmology_lists_names():
     with pytest.raises(InputError, match="Planck18"):
         cosmology("Planck99")

@@ -124,6 +124,15 @@ def test_measured_distance_rules_within_50_mpc(make_galaxies, planck):
     assert np.median(drawn.distance_kpc[2]) == pytest.approx(planck.angular_distance_kpc(0.03), rel=0.01)
 
 
+def test_a_distance_error_larger_than_the_distance_is_cut(make_galaxies, planck):
+    # 1.1 +- 4.6 Mpc stands in a published table: as a log-normal it would put the galaxy next to us
+    galaxies = make_galaxies(
+        "g", 1, distance_mpc=1.1, distance_err_mpc=4.6, z=-0.0006, log_mstar=8.0, log_mstar_err=0.1
+    )
+    drawn = draws(galaxies, planck)
+    assert np.std(np.log(drawn.distance_kpc[0])) == pytest.approx(0.5, rel=0.05)
+
+
 def test_mass_follows_the_drawn_distance(make_galaxies, planck):
     galaxies = make_galaxies(
         "g", 1, distance_mpc=20.0, distance_err_mpc=4.0, z=0.004, log_mstar=9.5, log_mstar_err=0.05

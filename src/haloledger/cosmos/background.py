@@ -10,7 +10,7 @@ from scipy.interpolate import CubicSpline
 from haloledger.errors import InputError
 
 Z_MAX = 12.0
-# sigma8 and n_s as in PHYSICS check values: Planck 2018 VI (A&A 641, A6), table 2, last column
+# where astropy does not tell them: Planck 2018 VI (A&A 641, A6), table 2, last column
 SPECTRUM = {"sigma8": 0.8102, "n_s": 0.9665}
 
 
@@ -27,8 +27,9 @@ class Cosmos:
         self.omega_m = float(exact.Om0)
         self.omega_b = float(exact.Ob0)
         self.baryon_share = self.omega_b / self.omega_m
-        self.sigma8 = SPECTRUM["sigma8"]
-        self.n_s = float(getattr(exact, "meta", {}).get("n", SPECTRUM["n_s"]) or SPECTRUM["n_s"])
+        about = getattr(exact, "meta", None) or {}
+        self.sigma8 = float(about.get("sigma8") or SPECTRUM["sigma8"])
+        self.n_s = float(about.get("n") or SPECTRUM["n_s"])
 
     @cached_property
     def _nodes(self) -> np.ndarray:
