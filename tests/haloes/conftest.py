@@ -16,14 +16,7 @@ def make_galaxies() -> Callable[..., Galaxies]:
 
     def make(label: str, n: int, **given) -> Galaxies:
         blank = np.full(n, np.nan)
-        columns = {
-            "label": label,
-            "row": np.array([f"{label}:{i:06d}" for i in range(n)], dtype=object),
-            "ra_deg": np.full(n, 150.0),
-            "dec_deg": np.full(n, 2.0),
-            "z": np.full(n, 0.1),
-            "z_err": np.zeros(n),
-            "photometric": np.zeros(n, dtype=bool),
+        columns = _places(label, n) | {
             "group": np.full(n, "", dtype=object),
             "mag": {},
         }
@@ -41,14 +34,7 @@ def make_groups() -> Callable[..., Groups]:
 
     def make(label: str, n: int, **given) -> Groups:
         blank = np.full(n, np.nan)
-        columns = {
-            "label": label,
-            "row": np.array([f"{label}:{i:06d}" for i in range(n)], dtype=object),
-            "ra_deg": np.full(n, 150.0),
-            "dec_deg": np.full(n, 2.0),
-            "z": np.full(n, 0.1),
-            "z_err": np.zeros(n),
-            "photometric": np.zeros(n, dtype=bool),
+        columns = _places(label, n) | {
             "centre_err_kpc": np.zeros(n),
             "mass_def": np.full(n, "200c", dtype=object),
         }
@@ -57,6 +43,18 @@ def make_groups() -> Callable[..., Groups]:
         return Groups(**(columns | _filled(given, n)))
 
     return make
+
+
+def _places(label: str, n: int) -> dict:
+    return {
+        "label": label,
+        "row": np.array([f"{label}:{i:06d}" for i in range(n)], dtype=object),
+        "ra_deg": np.full(n, 150.0),
+        "dec_deg": np.full(n, 2.0),
+        "z": np.full(n, 0.1),
+        "z_err": np.zeros(n),
+        "photometric": np.zeros(n, dtype=bool),
+    }
 
 
 def _filled(given: dict, n: int) -> dict:

@@ -23,7 +23,7 @@ def available() -> bool:
     return find_spec("kcorrect") is not None
 
 
-def library() -> str:
+def made_by() -> str:
     """Name and version, for the note of each mass."""
     try:
         return f"kcorrect {version('kcorrect')}"

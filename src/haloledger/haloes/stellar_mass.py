@@ -114,7 +114,7 @@ def _corrected_gi(galaxies: Galaxies, modulus, z):
     wanted = np.isnan(galaxies.log_mstar)
     k = k_corrections.k_corrections(optical, np.where(wanted & (z <= c["z_max"]), z, np.nan))
     g, i = (galaxies.mag[b] - k[b] for b in "gi")
-    note = f"{c['note']}, K-corrected by {k_corrections.library()}"
+    note = f"{c['note']}, K-corrected by {k_corrections.made_by()}"
     return mass_from_gi(g - i, i - modulus), np.full(len(galaxies), c["error_dex"]), note
 
 
