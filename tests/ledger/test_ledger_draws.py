@@ -138,7 +138,7 @@ def test_a_group_that_may_hold_the_burst_does_so_in_a_share_of_draws():
     share = {}
     for kms in (0, 900, 1500):
         z = 0.1 + 1.1 * kms / 299792.458
-        groups = sky.Table(rows=[sky.group(z=0.1, log_mass=14.0, dec=sky.HERE[1] + 0.02)])
+        groups = sky.Table(rows=[sky.group(z=0.1, log_mass=14.0, log_mass_err=0.01, dec=sky.HERE[1] + 0.02)])
         ledgers = audit(sky.bursts(sky.burst(z=z)), groups=[groups], models=["blended"], draws=2000, keep_draws=True)
         terms = ledgers.draws
         assert not np.any((terms.dm_foreground > 0) & (terms.dm_at_source > 0))  # in one draw it is one or the other

@@ -119,16 +119,17 @@ def _concentration(draws: HaloDraws, relation: str | float, cosmos: Cosmos) -> n
 def with_burst_inside(
     crossing: Crossing, odds: np.ndarray, sightline: Sightline, haloes: Haloes, universe: Universe
 ) -> Crossing:
-    """The crossing with the burst inside one halo at most in each draw, by the odds (n_haloes,) of those that draw has.
+    """The crossing with the burst inside one halo at most in each draw, by the odds of those that draw has.
 
     Its depth there is drawn from an NFW density along the line, out to two r200c: a velocity difference says nothing
     about the order along the line inside one halo.
+    odds  (n_haloes, n_draws)
     """
-    rows = np.flatnonzero(odds > 0)
+    rows = np.flatnonzero((odds > 0).any(axis=1))
     if not rows.size:
         return crossing
     pick = universe.uniforms("inside", [sightline.burst])[0]
-    weight = odds[rows, None] * crossing.own[rows]  # a satellite's place has no halo to sit in
+    weight = odds[rows] * crossing.own[rows]  # a satellite's place has no halo to sit in
     upper = np.cumsum(weight, axis=0)
     whole = 1 + upper[-1]
     inside = (pick < upper / whole) & (pick >= (upper - weight) / whole)

@@ -209,8 +209,9 @@ def _cross(ground: Ground, i: int, sightline: Sightline, index: np.ndarray, rela
         part = cross(sightline, ground.haloes, index[start : start + AT_ONCE], relation, ground.universe, ground.cosmos)
         parts.append(part.rows(np.flatnonzero(_met(part, ground.widest_r200c))))
     crossing = join(parts)
-    typical = np.median(crossing.log_m200c, axis=1) if len(crossing.index) else np.zeros(0)
-    odds = odds_of_holding(ground.bursts, i, ground.haloes, crossing.index, typical, ground.cosmos)
+    odds = odds_of_holding(
+        ground.bursts, i, ground.haloes, crossing.index, crossing.log_m200c, crossing.impact_kpc, ground.cosmos
+    )
     return with_burst_inside(crossing, odds, sightline, ground.haloes, ground.universe)
 
 

@@ -22,6 +22,8 @@ WIDEST_ARCSEC = 20.0
 """A poor localisation does not turn every galaxy inside it into the host."""
 CERTAIN = 1e12
 """Odds of what a catalogue says itself."""
+FAR_SIGMAS = 6.0
+"""Farther in velocity than this many dispersions, a halo does not hold the burst."""
 WIDEST_Z_ERR = 0.012
 """A group with a larger redshift error, over 1 + z, cannot be said to hold the burst."""
 
@@ -65,40 +67,64 @@ def with_unknown_hosts(bursts: Bursts, catalogues: Sequence) -> Bursts:
 
 
 def odds_of_holding(
-    bursts: Bursts, i: int, haloes: Haloes, index: np.ndarray, log_m200c: np.ndarray, cosmos: Cosmos
+    bursts: Bursts,
+    i: int,
+    haloes: Haloes,
+    index: np.ndarray,
+    log_m200c: np.ndarray,
+    impact_kpc: np.ndarray,
+    cosmos: Cosmos,
 ) -> np.ndarray:
-    """Odds that burst i sits in each halo of `index` against its being in none, (n_index,).
+    """Odds that burst i sits in each halo of `index` against its being in none, draw by draw (n_index, n_draws).
 
     The group that lists the host is certain, and then no other. Else, inside r200c on the sky, galaxies follow matter:
 
         odds = delta x 2 sqrt(r200c^2 - R^2) H(z) / c x N(dv | sigma_v and errors)
 
     the density inside the halo against the mean density along the line in the Hubble flow, as for members of groups.
-    log_m200c (n_index,): a typical mass of each.
+    log_m200c, impact_kpc  draws of the mass and of the impact parameter (n_index, n_draws)
     """
     z = bursts.z[i]
+    odds = np.zeros(log_m200c.shape)
     if np.isnan(z):
-        return np.zeros(len(index))
+        return odds
     listed = _lists_host(str(bursts.host[i]), haloes, index)
     if listed.any():
-        return np.where(listed, CERTAIN, 0.0)
+        return odds + np.where(listed, CERTAIN, 0.0)[:, None]
+    near = np.flatnonzero(_may_hold(bursts, i, haloes, index, log_m200c, cosmos))
+    if near.size:
+        odds[near] = _odds(bursts, i, haloes, index[near], log_m200c[near], impact_kpc[near], cosmos)
+    return odds
+
+
+def _may_hold(bursts: Bursts, i: int, haloes: Haloes, index, log_m200c, cosmos: Cosmos) -> np.ndarray:
+    """Haloes whose redshift is sharp enough to tell, and not plainly another (n_index,) bool."""
+    z, z_halo = bursts.z[i], point_redshift(haloes, cosmos)[index]
+    error_z = np.sqrt(haloes.z_err[index] ** 2 + np.nan_to_num(bursts.z_err[i]) ** 2)
+    sigma = _sigma_kms(log_m200c.max(axis=1), z_halo, cosmos) / LIGHT_KMS
+    sharp = (error_z <= WIDEST_Z_ERR * (1 + z)) & ~(haloes.photometric[index] & (haloes.kind[index] == "galaxy"))
+    # where distances rule, a burst far behind in the Hubble flow is not inside, whatever the velocities say
+    flow = ~by_distance(haloes)[index] | (np.abs(z - z_halo) <= 3 * (sigma + PECULIAR_KMS / LIGHT_KMS))
+    return sharp & flow & (np.abs(z - z_halo) <= FAR_SIGMAS * (np.hypot(sigma, error_z) + PECULIAR_KMS / LIGHT_KMS))
+
+
+def _odds(bursts: Bursts, i: int, haloes: Haloes, index, log_m200c, impact_kpc, cosmos: Cosmos) -> np.ndarray:
     z_halo = point_redshift(haloes, cosmos)[index]
     # a velocity is compared with the listed redshift where there is one, since it is what both share
-    z_listed = np.where(np.isfinite(haloes.z[index]), haloes.z[index], z_halo)
-    angle = separation_deg(haloes.ra_deg[index], haloes.dec_deg[index], bursts.ra_deg[i], bursts.dec_deg[i])
-    impact_kpc = cosmos.angular_distance_kpc(z_halo) * np.sin(np.radians(np.minimum(angle, 90.0)))
-    sigma_kms = 10 ** load_relation("evrard2008").mean(log_m200c, z_halo, cosmos)
-    error_z = np.sqrt(haloes.z_err[index] ** 2 + np.nan_to_num(bursts.z_err[i]) ** 2)
-    error_kms = np.hypot(sigma_kms, error_z * LIGHT_KMS / (1 + z))
-    apart_kms = (z - z_listed) * LIGHT_KMS / (1 + z_listed)
+    listed = haloes.z[index]
+    z_listed = np.where(np.isfinite(listed), listed, z_halo)[:, None]
+    z_halo = z_halo[:, None]
+    error_z = np.sqrt(haloes.z_err[index] ** 2 + np.nan_to_num(bursts.z_err[i]) ** 2)[:, None]
+    error_kms = np.hypot(_sigma_kms(log_m200c, z_halo, cosmos), error_z * LIGHT_KMS / (1 + bursts.z[i]))
+    apart_kms = (bursts.z[i] - z_listed) * LIGHT_KMS / (1 + z_listed)
     chord_kpc = 2 * np.sqrt(np.maximum(cosmos.r200c_kpc(log_m200c, z_halo) ** 2 - impact_kpc**2, 0.0))
     hubble_kms = 0.1 * cosmos.h * cosmos.e_of_z(z_halo) * chord_kpc
     per_kms = np.exp(-0.5 * (apart_kms / error_kms) ** 2) / (np.sqrt(2 * np.pi) * error_kms)
-    odds = 200 / cosmos.omega_m_z(z_halo) * hubble_kms * per_kms
-    sharp = (error_z <= WIDEST_Z_ERR * (1 + z)) & ~(haloes.photometric[index] & (haloes.kind[index] == "galaxy"))
-    # where distances rule, a burst far behind in the Hubble flow is not inside, whatever the velocities say
-    flow = ~by_distance(haloes)[index] | (np.abs(z - z_halo) <= 3 * (sigma_kms + PECULIAR_KMS) / LIGHT_KMS)
-    return np.where(sharp & flow, odds, 0.0)
+    return 200 / cosmos.omega_m_z(z_halo) * hubble_kms * per_kms
+
+
+def _sigma_kms(log_m200c, z, cosmos: Cosmos) -> np.ndarray:
+    return 10 ** load_relation("evrard2008").mean(log_m200c, z, cosmos)
 
 
 def _lists_host(host: str, haloes: Haloes, index: np.ndarray) -> np.ndarray:
