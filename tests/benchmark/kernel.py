@@ -3,9 +3,10 @@
     python tests/benchmark/kernel.py
 
 (a) scipy.integrate.quad, once for each halo and draw
-(b) the best numpy we could write: 64-node Gauss-Legendre for all draws of one halo, closed-form normalisation, in place,
-    sampling included; what the columns alone cost stands in a further line
-The kernel and (a) are given arrays of impact parameter, mass, redshift, concentration and r200c. Speeds are the best of several runs in one process; the ratios are what counts.
+(b) the best numpy we could write: 64-node Gauss-Legendre for all draws of one halo, closed-form normalisation,
+    in place, sampling included; what the columns alone cost stands in a further line
+The kernel and (a) are given arrays of impact parameter, mass, redshift, concentration and r200c. Speeds are the best of
+several runs in one process; the ratios are what counts.
 """
 
 from __future__ import annotations

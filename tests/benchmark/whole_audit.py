@@ -69,7 +69,7 @@ def main() -> None:
         print(f"  {what:32s} {seconds:8.2f} s")
     print(f"  {'whole audit':32s} {total:8.2f} s   {1e9 * total / columns:8.0f} ns a column")
     for name, each in (("(a) scipy.quad, columns alone", quad_each), ("(b) numpy, sampling and columns", numpy_each)):
-        print(f"  {name:32s} {each * columns:8.2f} s   {1e9 * each:8.0f} ns a column   {each * columns / total:7.1f} x")
+        print(f"  {name:32s} {each * columns:8.2f} s   {1e9 * each:8.0f} ns a column   {each * columns / total:7.2f} x")
     print(f"  peak memory {resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 1024:.0f} MB")
 
 
