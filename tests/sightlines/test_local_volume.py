@@ -138,7 +138,8 @@ def test_published_groups_cover_the_table(planck, shared_data):
     groups = read_groups(f"kourkchi-tully:{shared_data}/groups/kourkchi_tully_2017.txt")
     left = uncovered(local_groups(), [], [groups], planck)
     haloes = with_local([], [groups], left, planck)
-    assert not (haloes.kind == "local").any()
+    # the Clouds lie inside the Milky Way's halo and are no groups: only their discs are met
+    assert set(haloes.id[haloes.kind == "local"]) == {"local:LMC", "local:SMC"}
     for name, row in (("M31", "900002557"), ("M81", "700028630"), ("CenA", "700046957"), ("Virgo", "500041220")):
         held = [r for r in haloes.source_rows if f"kourkchi-tully:{row}" in str(r).split(";")]
         assert len(held) == 1, name

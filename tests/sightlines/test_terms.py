@@ -124,3 +124,10 @@ def test_electron_model_value():
     pytest.importorskip("mwprop", reason="the optional electron model (extra 'milkyway') is not installed")
     model = electron_model("ne2025")
     assert model(180.0, -20.0) == pytest.approx(67.022, rel=0.01)
+
+
+def test_a_burst_below_the_milky_way_is_next_door(planck):
+    universe = Universe(seed=3, n_draws=300)
+    hosts = 152.9 * np.exp(0.96 * universe.normals("h", ["x"])[0])
+    drawn = redshift_from_dm("x", np.full(300, 50.0), np.full(300, 60.0), hosts, universe, planck)
+    assert np.quantile(drawn, 0.84) < 0.05

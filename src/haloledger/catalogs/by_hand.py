@@ -16,6 +16,7 @@ from haloledger.errors import InputError
 
 LABEL = "by-hand"
 SHARP_Z_ERR = 0.005  # a redshift set by hand with a larger error is photometric
+NEARBY_MPC = 50.0  # within it a measured distance rules
 FEW = 20_000  # names among which a near match is looked for
 
 Table = Galaxies | Groups
@@ -127,15 +128,26 @@ def _not_one(hand: ByHand, change: Override, found: list) -> Refusal:
     return change.refusal("object", "no such row in any catalogue", f"Write CATALOGUE:ID as in source_rows.{hint}")
 
 
+def _luminosity_mpc(table: Any, i: int, sets: dict[str, Any], luminosity_mpc: Callable) -> float:
+    """Luminosity distance [Mpc] of row i with `sets` made: a distance within 50 Mpc rules, then the redshift."""
+    distance = sets.get("distance_mpc", np.nan if "z" in sets else table.distance_mpc[i])
+    z = sets.get("z", table.z[i])
+    if np.isfinite(distance) and (distance <= NEARBY_MPC or not z > 0):
+        return float(distance)
+    return float(luminosity_mpc(z)) if z > 0 else 0.0
+
+
 def _changed(table: Any, i: int, sets: dict[str, Any], luminosity_mpc: Callable) -> Any:
     """The table with row i set. A redshift set by hand replaces a listed distance."""
     new = {name: np.array(getattr(table, name)) for name in ("z", "z_err", "photometric", "distance_mpc")}
     new["distance_err_mpc"] = np.array(table.distance_err_mpc)
     masses = ("log_mstar", "log_m200c") if isinstance(table, Galaxies) else ("log_mass",)
     new |= {name: np.array(getattr(table, name)) for m in masses for name in (m, f"{m}_err")}
+    if "log_mstar" in new and "log_mstar" not in sets:
+        before, after = _luminosity_mpc(table, i, {}, luminosity_mpc), _luminosity_mpc(table, i, sets, luminosity_mpc)
+        if before > 0 and after > 0:  # light was seen, so the mass goes with the distance squared
+            new["log_mstar"][i] += 2 * np.log10(after / before)
     if "z" in sets:
-        if "log_mstar" in new and table.z[i] > 0 and sets["z"] > 0 and np.isnan(table.distance_mpc[i]):
-            new["log_mstar"][i] += 2 * np.log10(luminosity_mpc(sets["z"]) / luminosity_mpc(table.z[i]))
         if getattr(table, "z_flow", None) is not None:  # the frame's motion stays what it is in that direction
             new["z_flow"] = np.array(table.z_flow)
             new["z_flow"][i] = (1 + sets["z"]) * _frame_factor(table, i) - 1

@@ -13,18 +13,20 @@ from haloledger.haloes.listing import galaxy_haloes, group_haloes
 from haloledger.haloes.table import Haloes, change, join, rows
 from haloledger.sightlines.geometry import separation_deg
 
-COVER_R200C, COVER_DEG = 0.6, 0.5
+COVER_R200C, COVER_DEG, WIDEST_DEG = 0.6, 0.5, 3.5
 """A listed halo this near to a centre covers it: light-weighted centres of groups lie that far from the main galaxy."""
 COVER_DEX = 1.0
 COVER_KMS = 500.0
 COVER_SIGMA = 3.0
+INSIDE_MPC = 0.3
 
 
 def uncovered(local: Groups, galaxies: list[Galaxies], groups: list[Groups], cosmos: Cosmos) -> Groups:
     """The rows of the built-in table that no catalogue covers.
 
-    Covered: a listed halo within 0.6 r200c or 0.5 deg of the centre, at a distance (or velocity, 500 km/s) that agrees,
-    of a mass within 1 dex. A satellite is covered with the halo it lies in.
+    Covered: a listed halo within 0.6 r200c or 0.5 deg of the centre, but at most 3.5 deg, at a distance that agrees
+    (where it has none, at a velocity within 500 km/s), of a mass within 1 dex. A satellite is covered with the halo it
+    lies in.
     """
     if not len(local):
         return local
@@ -77,7 +79,7 @@ def _marked(haloes: Haloes, known: dict[str, LocalHalo], local: Groups) -> Haloe
 
 def _cover_radius_deg(table: Haloes, cosmos: Cosmos) -> np.ndarray:
     kpc = COVER_R200C * cosmos.r200c_kpc(table.value, np.zeros(len(table)))
-    return np.maximum(np.degrees(np.minimum(kpc / (1e3 * table.distance_mpc), 0.5)), COVER_DEG)
+    return np.clip(np.degrees(np.minimum(kpc / (1e3 * table.distance_mpc), 0.5)), COVER_DEG, WIDEST_DEG)
 
 
 def _near_rows(table: Haloes, radius: np.ndarray, listed) -> np.ndarray:
@@ -97,5 +99,7 @@ def _covered_by(table: Haloes, radius: np.ndarray, listed: Haloes, cosmos: Cosmo
     share = np.hypot(distance_error_share(table)[:, None], distance_error_share(listed))
     measured = np.abs(np.log(table.distance_mpc[:, None] / listed.distance_mpc)) <= COVER_SIGMA * share
     velocity = np.abs(table.z[:, None] - listed.z) <= COVER_KMS / 299792.458 + COVER_SIGMA * listed.z_err
-    agrees = np.where(by_distance(listed), measured | velocity, velocity)
+    # a velocity says nothing of the distance where one is listed, and nothing at all inside the Milky Way's halo
+    velocity &= (table.distance_mpc > INSIDE_MPC)[:, None]
+    agrees = np.where(by_distance(listed), measured, velocity)
     return ((apart <= radius[:, None]) & mass & agrees).any(axis=1)

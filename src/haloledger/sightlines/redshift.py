@@ -38,7 +38,9 @@ def redshift_from_dm(
     above = np.argmax(cdf >= wanted[None, :], axis=0)
     low = np.where(above > 0, np.take_along_axis(cdf, np.maximum(above - 1, 0)[None, :], 0)[0], 0.0)
     high = np.take_along_axis(cdf, above[None, :], 0)[0]
-    return np.maximum(z[above] - (z[1] - z[0]) * (high - wanted) / np.maximum(high - low, 1e-300), Z_LEAST)
+    drawn = np.maximum(z[above] - (z[1] - z[0]) * (high - wanted) / np.maximum(high - low, 1e-300), Z_LEAST)
+    # where the Milky Way leaves less than any host and cosmos give, the burst is next door
+    return np.where(likelihood.sum(axis=0) > 0, drawn, Z_LEAST)
 
 
 def _likelihood(extragalactic: np.ndarray, z: np.ndarray, host_rest: np.ndarray, cosmos: Cosmos) -> np.ndarray:
