@@ -27,7 +27,7 @@ REFERENCE = [  # relation, log mass in its definition, z, log M*: tables of the 
     ("behroozi2019", 12.5, 0.5, 10.7019),
     ("behroozi2019", 14.0, 0.0, 11.5466),
     ("kravtsov2018", 13.0, 0.0, 11.3091),
-    ("girelli2020", 12.0, 0.5, 10.6043),
+    ("kravtsov2018_no_scatter", 11.39, 0.0, 9.772),  # at its own M1: log epsilon + log M1, by hand
 ]
 
 

@@ -22,7 +22,7 @@ from haloledger.rehearse.survey import GROUPS, Seen, Survey, look
 Progress = Callable[[int, int, str], None]
 DEFAULT_MODEL = "textbook-modified-nfw"
 SECOND_TRUTH: dict[str, Any] = {
-    "relation": "girelli2020",
+    "relation": "kravtsov2018_no_scatter",
     "scatter_factor": 1.5,
     "satellites": "subhaloes",
     "satellite_share": 0.35,

@@ -1,4 +1,4 @@
-"""Stellar mass of a halo's own galaxy, from four published relations: the sky's own few lines.
+"""Stellar mass of a halo's own galaxy, from published relations: the sky's own few lines.
 
 Each gives the mean log10 of M* at log10 of the halo mass in the relation's definition, and a scatter.
 """
@@ -48,11 +48,9 @@ def kravtsov2018(m, z):
     return -1.642 + 11.35 + _bend(m - 11.35, -1.779, 4.394, 0.547)
 
 
-def girelli2020(m, z):
-    """Girelli et al. 2020, A&A 634, A135, eq. 6 and table 3; taken as M200c (to be checked). None of the audit's."""
-    m1, n = 11.79 + 0.20 * z, 0.046 * (1 + z) ** -0.38
-    x = 10 ** (m - m1)
-    return m + np.log10(2 * n / (x ** -(0.96 + 0.043 * z) + x ** (0.709 * (1 + z) ** -0.18)))
+def kravtsov2018_no_scatter(m, z):
+    """Kravtsov et al. 2018, Astron. Lett. 44, 8, table 3 without scatter; M200c, no evolution. None of the audit's."""
+    return -1.618 + 11.39 + _bend(m - 11.39, -1.795, 4.345, 0.619)
 
 
 def _bend(x, alpha, delta, gamma):
@@ -63,7 +61,7 @@ def _bend(x, alpha, delta, gamma):
     return f(x) - f(0.0)
 
 
-_MEAN = {f.__name__: f for f in (behroozi2013, behroozi2019, kravtsov2018, moster2013, girelli2020)}
+_MEAN = {f.__name__: f for f in (behroozi2013, behroozi2019, kravtsov2018, moster2013, kravtsov2018_no_scatter)}
 ALL = tuple(_MEAN)
 _IN_VIRIAL_MASS = ("behroozi2013", "behroozi2019")
 
@@ -77,7 +75,11 @@ def mean_log_mstar(name: str, log_m200c, z, c200c, cosmos: Cosmos) -> np.ndarray
 def scatter_dex(name: str, z) -> np.ndarray:
     """Scatter of log10 M* at fixed halo mass [dex]: as published, or assumed by the authors (from memory)."""
     a = 1 / (1 + np.asarray(z))
-    value = {"moster2013": 0.15, "behroozi2019": 0.2, "kravtsov2018": 0.2, "behroozi2013": 0.218, "girelli2020": 0.2}[
-        name
-    ]
+    value = {
+        "moster2013": 0.15,
+        "behroozi2019": 0.2,
+        "kravtsov2018": 0.2,
+        "behroozi2013": 0.218,
+        "kravtsov2018_no_scatter": 0.2,
+    }[name]
     return value + (-0.023 * (a - 1) if name == "behroozi2013" else 0 * a)
